@@ -1,0 +1,18 @@
+# SPDX-License-Identifier: BSL-1.0
+# Runs FIRST and SECOND and fails unless both return 0 and print the same, which must be something.
+foreach(which IN ITEMS FIRST SECOND)
+  execute_process(COMMAND "${${which}}" OUTPUT_VARIABLE ${which}_text RESULT_VARIABLE result)
+  if(NOT result EQUAL 0)
+    message(FATAL_ERROR "${${which}} returned ${result}")
+  endif()
+  string(REGEX MATCHALL "\n" lines "${${which}_text}")
+  list(LENGTH lines ${which}_lines)
+endforeach()
+if(FIRST_lines EQUAL 0)
+  message(FATAL_ERROR "${FIRST} printed nothing, so nothing was compared")
+endif()
+if(NOT FIRST_text STREQUAL SECOND_text)
+  message("first:\n${FIRST_text}\nsecond:\n${SECOND_text}")
+  message(FATAL_ERROR "the two programs print different bits")
+endif()
+message("${FIRST_lines} lines, the same from both")

@@ -1,0 +1,20 @@
+# SPDX-License-Identifier: BSL-1.0
+# Installs BUILD and then moves the tree to PREFIX: an installed tree must not know where it was put.
+file(REMOVE_RECURSE "${PREFIX}" "${PREFIX}.first")
+execute_process(COMMAND "${CMAKE_COMMAND}" --install "${BUILD}" --prefix "${PREFIX}.first" RESULT_VARIABLE result
+                OUTPUT_QUIET)
+if(NOT result EQUAL 0)
+  message(FATAL_ERROR "the install failed")
+endif()
+file(RENAME "${PREFIX}.first" "${PREFIX}")
+file(GLOB_RECURSE files "${PREFIX}/*.cmake" "${PREFIX}/*.pc")
+if(NOT files)
+  message(FATAL_ERROR "nothing was installed for CMake or pkg-config")
+endif()
+foreach(file IN LISTS files)
+  file(READ "${file}" text)
+  string(FIND "${text}" "${PREFIX}" place)
+  if(NOT place EQUAL -1)
+    message(FATAL_ERROR "${file} names the folder it was installed to")
+  endif()
+endforeach()

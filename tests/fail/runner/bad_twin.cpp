@@ -1,0 +1,3 @@
+// expect: missing
+// runner: the legal twin does not compile
+int main() { return missing; }

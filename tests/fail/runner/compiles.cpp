@@ -1,0 +1,3 @@
+// expect: whatever
+// runner: compiles, but must not
+int main() { return 0; }

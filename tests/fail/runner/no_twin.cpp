@@ -1,0 +1,3 @@
+// expect: missing
+// runner: there is no legal twin
+int main() { return missing; }

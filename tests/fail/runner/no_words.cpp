@@ -1,0 +1,2 @@
+// runner: the first line must be
+int main() { return missing; }
