@@ -33,12 +33,31 @@ inline constexpr double log_coefficients[7] = {
     0x1.5555555555593p-1, 0x1.999999997fc7dp-2, 0x1.249249420406dp-2, 0x1.c71c51f8e7912p-3,
     0x1.7466427fb7c3dp-3, 0x1.39a158cfb05e8p-3, 0x1.2f0970a6321bcp-3};
 
-/// c[0] + c[1] x + ... by Horner's rule, every step rounded on its own.
+/// c[First] + c[First + Step] x + ... by Horner's rule, every step rounded on its own.
+template <std::size_t First, std::size_t Step, std::size_t Terms>
+inline double horner(double const (&c)[Terms], double x) noexcept {
+  if constexpr (First + Step >= Terms)
+    return c[First];
+  else
+    return plus(times(horner<First + Step, Step>(c, x), x), c[First]);
+}
+
+/// c[0] + c[1] x + ..., even and odd terms side by side.
 template <std::size_t Terms>
 inline double polynomial(double const (&c)[Terms], double x) noexcept {
-  double sum = c[Terms - 1];
-  for (std::size_t k = Terms - 1; k-- > 0;) sum = plus(times(sum, x), c[k]);
-  return sum;
+  double const x2 = times(x, x);
+  return plus(times(horner<1, 2>(c, x2), x), horner<0, 2>(c, x2));
+}
+
+/// The same for the exponential's ten terms, in pairs rather than one after
+/// another: the order that base/lanes.hpp keeps too.
+inline double exp_polynomial(double r, double r2) noexcept {
+  double const(&c)[10] = exp_coefficients;
+  auto const two_terms = [&](std::size_t k) { return plus(times(r, c[k + 1]), c[k]); };
+  double const r4 = times(r2, r2);
+  double const low = plus(two_terms(0), times(two_terms(2), r2));
+  double const middle = plus(plus(two_terms(4), times(two_terms(6), r2)), times(two_terms(8), r4));
+  return plus(low, times(middle, r4));
 }
 
 /// x = n ln 2 + r (+ rest), |r| <= ln(2)/2, and e^r = 1 + r + tail.
@@ -55,9 +74,10 @@ inline exp_reduction reduce_exponent(double x) noexcept {
   double const near = minus(x, times(whole, ln2_high));  // exact
   double const step = times(whole, ln2_low);
   double const r = minus(near, step);
+  double const r2 = times(r, r);
   return {static_cast<std::int64_t>(std::bit_cast<std::uint64_t>(shifted) -
                                     std::bit_cast<std::uint64_t>(round_to_integer)),
-          r, minus(minus(near, r), step), times(times(r, r), polynomial(exp_coefficients, r))};
+          r, minus(minus(near, r), step), times(exp_polynomial(r, r2), r2)};
 }
 
 /// e^x without libm: the same bits on every processor.

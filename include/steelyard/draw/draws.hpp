@@ -11,6 +11,7 @@
 #include <steelyard/base/error.hpp>
 #include <steelyard/base/text.hpp>
 #include <steelyard/draw/discrete.hpp>
+#include <steelyard/draw/first_words.hpp>
 #include <steelyard/draw/from.hpp>
 #include <steelyard/draw/inversion.hpp>
 #include <steelyard/draw/philox.hpp>
@@ -166,15 +167,6 @@ namespace detail {
                      rule);
 }
 
-/// Words of the blocks first, first + 1, ... of one stream; whole blocks only.
-inline void philox_stream(std::uint64_t seed, std::uint64_t stream, purpose what, std::uint64_t round,
-                          std::uint64_t first_block, std::span<std::uint64_t> out) noexcept {
-  for (std::size_t w = 0; w < out.size(); w += 4) {
-    philox_block const words = philox({first_block + w / 4, stream, static_cast<std::uint64_t>(what), round}, seed, 0);
-    for (std::size_t k = 0; k < 4; ++k) out[w + k] = words[k];
-  }
-}
-
 /// What the engine may do with a `draws` and user code may not: put it on
 /// another stream, feed it other words. Every call starts afresh at word 0.
 struct draws_access {
@@ -233,14 +225,14 @@ inline void draws::refill() {
     std::size_t const old = record_->size();
     record_->resize(old + size);
     std::span<std::uint64_t> const fresh(record_->data() + old, size);
-    detail::philox_stream(seed_, stream_, purpose_, round_, (old - given_) / 4, fresh);
+    detail::stream_words(seed_, stream_, purpose_, round_, (old - given_) / 4, fresh);
     next_ = fresh.data();
   } else {
     std::span<std::uint64_t> const fresh(buffer_, size);
     if (source_ != nullptr)
       source_->fill(seed_, stream_, supplied_, fresh);
     else
-      detail::philox_stream(seed_, stream_, purpose_, round_, supplied_ / 4, fresh);
+      detail::stream_words(seed_, stream_, purpose_, round_, supplied_ / 4, fresh);
     next_ = buffer_;
   }
   end_ = next_ + size;
