@@ -1,0 +1,131 @@
+// SPDX-License-Identifier: BSL-1.0
+#pragma once
+
+#include <cmath>
+#include <cstddef>
+#include <memory>
+#include <string>
+#include <utility>
+#include <vector>
+
+#include <steelyard/base/algorithm.hpp>
+#include <steelyard/base/bits.hpp>
+#include <steelyard/base/error.hpp>
+#include <steelyard/base/text.hpp>
+
+namespace steelyard::inline v1 {
+
+/// The edges of a histogram: closed left, open right, the last bin closed on
+/// both sides. Cells 0 to size() - 1 are the bins; then come below, above, NaN.
+class bins {
+ public:
+  /// Given edges, rising strictly. @throws bad_argument where they do not, or fewer than two.
+  explicit bins(std::vector<double> edges) : bins(std::move(edges), 0.0) {}
+
+  [[nodiscard]] std::size_t size() const noexcept { return edges_->size() - 1; }
+  [[nodiscard]] double edge(std::size_t i) const noexcept { return (*edges_)[i]; }
+  [[nodiscard]] double width(std::size_t b) const noexcept { return (*edges_)[b + 1] - (*edges_)[b]; }
+
+  /// The cell of a value: even edges by one product and a step, others by bisection.
+  [[nodiscard]] std::size_t cell(double x) const noexcept {
+    std::vector<double> const& e = *edges_;
+    std::size_t const n = e.size() - 1;
+    if (detail::is_nan(x)) return n + 2;
+    if (x < e.front()) return n;
+    if (x >= e.back()) return x == e.back() ? n - 1 : n + 1;
+    if (per_width_ > 0.0) {
+      std::size_t b = std::min(n - 1, static_cast<std::size_t>((x - e.front()) * per_width_));
+      while (x < e[b]) --b;
+      while (x >= e[b + 1]) ++b;
+      return b;
+    }
+    return static_cast<std::size_t>(std::upper_bound(e.begin(), e.end(), x) - e.begin()) - 1;
+  }
+
+ private:
+  friend bins equal_bins(double, double, std::size_t);
+
+  bins(std::vector<double> edges, double per_width) : per_width_(per_width) {
+    if (edges.size() < 2) throw bad_argument("histogram: a histogram needs at least two edges");
+    for (std::size_t i = 0; i < edges.size(); ++i)
+      if (!detail::is_finite(edges[i]) || (i > 0 && !(edges[i - 1] < edges[i])))
+        throw bad_argument("histogram: edge " + std::to_string(i) + " is " + detail::plain_number(edges[i]) +
+                           "; edges must be finite and rise strictly");
+    edges_ = std::make_shared<std::vector<double> const>(std::move(edges));
+  }
+
+  std::shared_ptr<std::vector<double> const> edges_;
+  double per_width_ = 0.0;
+};
+
+/// n bins of equal width. @throws bad_argument unless lower < upper, both finite, and n >= 1.
+[[nodiscard]] inline bins equal_bins(double lower, double upper, std::size_t n) {
+  if (!detail::is_finite(lower) || !detail::is_finite(upper) || !(lower < upper) || n == 0)
+    throw bad_argument("equal_bins: lower " + detail::plain_number(lower) + ", upper " + detail::plain_number(upper) +
+                       ", " + std::to_string(n) + " bins; lower must lie below upper and there must be a bin");
+  std::vector<double> edges(n + 1);
+  double const span = upper - lower;
+  for (std::size_t i = 0; i <= n; ++i) edges[i] = lower + span * (static_cast<double>(i) / static_cast<double>(n));
+  edges[n] = upper;
+  return bins(std::move(edges), static_cast<double>(n) / span);
+}
+
+/// n bins of equal width on a logarithmic scale. @throws bad_argument unless 0 < lower < upper, both finite, and n >= 1.
+[[nodiscard]] inline bins log_bins(double lower, double upper, std::size_t n) {
+  if (!detail::is_finite(lower) || !detail::is_finite(upper) || !(lower > 0.0) || !(lower < upper) || n == 0)
+    throw bad_argument("log_bins: lower " + detail::plain_number(lower) + ", upper " + detail::plain_number(upper) +
+                       ", " + std::to_string(n) + " bins; it needs 0 < lower < upper and a bin");
+  std::vector<double> edges(n + 1);
+  double const ratio = std::log(upper / lower);
+  for (std::size_t i = 0; i <= n; ++i)
+    edges[i] = lower * std::exp(ratio * (static_cast<double>(i) / static_cast<double>(n)));
+  edges[0] = lower;
+  edges[n] = upper;
+  return bins(std::move(edges));
+}
+
+/// Edges that the first 4096 entries of positive weight choose: see `automatic_bins`.
+struct automatic_bins_t {};
+/// Automatic edges: Freedman-Diaconis width 2 IQR n_eff^(-1/3) on the effective
+/// size, between the quantiles 0.001 and 0.999, 5 to 200 bins; where the
+/// quartiles coincide the whole range is cut into 5 bins, where all values do,
+/// one unit around it. The edges are recorded in the result.
+///   [Freedman & Diaconis, Z. Wahrscheinlichkeitstheorie 57, 1981, 453]
+inline constexpr automatic_bins_t automatic_bins{};
+
+namespace detail {
+
+/// Chooses automatic edges from a weighted pilot.
+inline bins choose_bins(std::vector<std::pair<double, double>> pilot) {
+  std::erase_if(pilot, [](auto const& each) { return !is_finite(each.first); });
+  if (pilot.empty()) return equal_bins(-0.5, 0.5, 1);
+  std::stable_sort(pilot.begin(), pilot.end(), [](auto const& a, auto const& b) { return a.first < b.first; });
+  double total = 0.0, squares = 0.0;
+  for (auto const& [x, w] : pilot) {
+    total += w;
+    squares += w * w;
+  }
+  auto const at = [&](double p) {
+    double sum = 0.0;
+    for (auto const& [x, w] : pilot)
+      if ((sum += w) >= p * total) return x;
+    return pilot.back().first;
+  };
+  double lower = at(0.001), upper = at(0.999);
+  double const spread = at(0.75) - at(0.25);
+  if (!(lower < upper)) {
+    lower = pilot.front().first;
+    upper = pilot.back().first;
+  }
+  if (!(lower < upper)) {
+    double const half = std::max(0.5, std::abs(lower) * 1e-3);
+    return equal_bins(lower - half, upper + half, 5);
+  }
+  double n = 5.0;
+  if (spread > 0.0) n = std::ceil((upper - lower) / (2.0 * spread / std::cbrt(total * (total / squares))));
+  return equal_bins(lower, upper, static_cast<std::size_t>(std::clamp(n, 5.0, 200.0)));
+}
+
+}  // namespace detail
+
+}  // namespace steelyard::inline v1

@@ -1,0 +1,137 @@
+// SPDX-License-Identifier: BSL-1.0
+#pragma once
+
+#include <cstddef>
+#include <cstdint>
+#include <span>
+#include <string>
+#include <vector>
+
+#include <steelyard/base/bits.hpp>
+#include <steelyard/base/error.hpp>
+#include <steelyard/base/text.hpp>
+#include <steelyard/estimate/run_facts.hpp>
+#include <steelyard/estimate/weight_totals.hpp>
+
+namespace steelyard::inline v1::detail {
+
+/// Samples in a block; rounds, checkpoints and ranks end on whole blocks.
+inline constexpr std::size_t block_size = 1024;
+/// Groups of the jackknife when samples are independent: (sample / 16) mod 64.
+inline constexpr std::size_t jackknife_groups = 64;
+inline constexpr std::size_t jackknife_run = 16;
+
+/// Up to 1024 weighed states as estimators see them: log-weights of all, and
+/// the readout columns of those of positive weight, packed in front.
+class block {
+ public:
+  /// @param columns  readout columns of all estimators together
+  explicit block(std::size_t columns, std::size_t capacity = block_size)
+      : capacity_(capacity), columns_(columns), values_(columns * capacity), weights_(capacity), kept_weights_(capacity) {
+    log_weights_.reserve(capacity);
+    positions_.reserve(capacity);
+    samples_.reserve(capacity);
+  }
+
+  /// @param first  number of the block's first sample
+  void clear(std::uint64_t first) {
+    first_ = first;
+    log_weights_.clear();
+    positions_.clear();
+    samples_.clear();
+    counts_.clear();
+    groups_.clear();
+    base_.clear();
+    kept_ = 0;
+  }
+
+  /// Takes in one state. Where it returns true, the state's readouts go to `row()` next.
+  bool push(std::uint64_t sample, double log_weight) {
+    std::size_t const at = log_weights_.size();
+    log_weights_.push_back(log_weight);
+    if (!(log_weight > impossible)) return false;
+    positions_.push_back(static_cast<std::uint32_t>(at));
+    samples_.push_back(sample);
+    ++kept_;
+    return true;
+  }
+  void push_count(std::uint64_t m) { counts_.push_back(m); }
+  void push_group(std::uint32_t label) { groups_.push_back(label); }
+  /// Room for the base weights of all states, to be filled by the caller.
+  [[nodiscard]] std::span<double> base(std::size_t n) {
+    base_.resize(n);
+    return base_;
+  }
+
+  /// First column of the last state pushed; columns lie `stride()` apart.
+  [[nodiscard]] double* row() noexcept { return values_.data() + (kept_ - 1); }
+  [[nodiscard]] double* first_row() noexcept { return values_.data(); }
+  [[nodiscard]] std::size_t stride() const noexcept { return capacity_; }
+
+  /// Turns log-weights to weights and packs the columns. @pre every push is done
+  void close(how_drawn how) {
+    how_ = how;
+    totals_ = weight_totals::of(log_weights_, counts_, std::span<double>(weights_.data(), log_weights_.size()));
+    for (std::size_t j = 0; j < kept_; ++j) kept_weights_[j] = weights_[positions_[j]];
+    pick(counts_, kept_counts_);
+    pick(groups_, kept_groups_);
+    for (std::size_t c = 1; c < columns_ && kept_ < capacity_; ++c)
+      for (std::size_t j = 0; j < kept_; ++j) values_[c * kept_ + j] = values_[c * capacity_ + j];
+  }
+
+  [[nodiscard]] weight_totals const& totals() const noexcept { return totals_; }
+  [[nodiscard]] std::size_t kept() const noexcept { return kept_; }
+  [[nodiscard]] std::span<std::uint64_t const> samples() const noexcept { return samples_; }
+  [[nodiscard]] std::uint64_t first() const noexcept { return first_; }
+
+  /// `columns` columns from `column` on, with the weights of the states of positive weight.
+  [[nodiscard]] weighted_view view(std::size_t column, std::size_t columns) const noexcept {
+    weighted_view v;
+    v.values = std::span<double const>(values_).subspan(column * kept_, columns * kept_);
+    v.weights = std::span<double const>(kept_weights_).first(kept_);
+    v.counts = kept_counts_;
+    v.groups = kept_groups_;
+    v.how = how_;
+    return v;
+  }
+  /// Every state, those of weight zero too; no values.
+  [[nodiscard]] weighted_view all() const noexcept {
+    weighted_view v;
+    v.weights = std::span<double const>(weights_).first(log_weights_.size());
+    v.counts = counts_;
+    v.groups = groups_;
+    v.base_weights = base_;
+    v.how = how_;
+    return v;
+  }
+
+  /// @throws bad_readout where a readout is not finite at a state of positive weight.
+  void refuse_not_finite(std::size_t column, std::size_t columns) const {
+    std::span<double const> const values = view(column, columns).values;
+    for (std::size_t k = 0; k < values.size(); ++k)
+      if (!is_finite(values[k]))
+        throw bad_readout("estimate: a readout of sample " + std::to_string(samples_[k % kept_]) + " is " +
+                          plain_number(values[k]) + "; it must be a finite number where the weight is positive");
+  }
+
+ private:
+  template <class T>
+  void pick(std::vector<T> const& from, std::vector<T>& to) const {
+    to.clear();
+    if (!from.empty())
+      for (std::size_t j = 0; j < kept_; ++j) to.push_back(from[positions_[j]]);
+  }
+
+  std::size_t capacity_;
+  std::size_t columns_;
+  std::uint64_t first_ = 0;
+  std::size_t kept_ = 0;
+  how_drawn how_ = how_drawn::independent;
+  std::vector<double> log_weights_, values_, weights_, kept_weights_, base_;
+  std::vector<std::uint32_t> positions_;
+  std::vector<std::uint64_t> samples_, counts_, kept_counts_;
+  std::vector<std::uint32_t> groups_, kept_groups_;
+  weight_totals totals_;
+};
+
+}  // namespace steelyard::inline v1::detail

@@ -1,0 +1,121 @@
+// SPDX-License-Identifier: BSL-1.0
+#pragma once
+
+#include <cstdint>
+#include <iosfwd>
+#include <span>
+#include <string>
+#include <utility>
+#include <vector>
+
+#include <steelyard/base/elementary.hpp>
+#include <steelyard/base/text.hpp>
+#include <steelyard/estimate/verdict.hpp>
+
+namespace steelyard::inline v1 {
+
+/// What a finding is about; its sentence says the rest.
+enum class finding_kind {
+  few_effective,   ///< the weights carry little
+  one_dominates,   ///< a single sample holds much of the weight
+  many_zeros,      ///< most states are impossible
+  failed_runs,     ///< runs of the simulator gave no state
+  stopped,         ///< the run ended before its size
+  hidden_state,    ///< replayed samples differ from the first run
+  few_groups,      ///< too few independent groups for an error bar
+  reading_doubt,   ///< a reading looks off scale
+};
+
+/// One sentence with the numbers and the next step.
+struct finding {
+  finding_kind kind;
+  std::string text;
+};
+
+/// Whether the weights can carry questions at all.
+class diagnosis {
+ public:
+  struct numbers {
+    std::uint64_t drawn = 0, states = 0, zeros = 0, failed = 0;
+    double effective_size = 0.0, perplexity = 0.0, largest_share = 0.0, groups = 0.0;
+  };
+
+  diagnosis() = default;
+  diagnosis(numbers const& n, std::vector<finding> findings) : n_(n), findings_(std::move(findings)) { judge(); }
+
+  /// Kish: (sum w)^2 / sum w^2, between 1 and n.                 [Kish, Survey Sampling, 1965]
+  [[nodiscard]] double effective_size() const noexcept { return n_.effective_size; }
+  /// exp(-sum W ln W), between 1 and n.
+  [[nodiscard]] double perplexity() const noexcept { return n_.perplexity; }
+  /// Largest normalised weight.
+  [[nodiscard]] double largest_share() const noexcept { return n_.largest_share; }
+  /// Share of the states that are impossible.
+  [[nodiscard]] double share_of_zeros() const noexcept {
+    return n_.states > 0 ? static_cast<double>(n_.zeros) / static_cast<double>(n_.states) : 0.0;
+  }
+  [[nodiscard]] std::uint64_t drawn() const noexcept { return n_.drawn; }
+  [[nodiscard]] std::uint64_t failed() const noexcept { return n_.failed; }
+  [[nodiscard]] std::span<finding const> findings() const noexcept { return findings_; }
+
+  /// The verdict on the weights alone: sound from an effective size of 50, broken
+  /// below 5. Each estimate has a verdict of its own, which can be worse.
+  [[nodiscard]] steelyard::verdict verdict() const noexcept {
+    return n_.effective_size >= 50.0  ? steelyard::verdict::sound
+           : n_.effective_size >= 5.0 ? steelyard::verdict::strained
+                                      : steelyard::verdict::broken;
+  }
+
+ private:
+  void judge() {
+    using detail::short_number;
+    auto say = [&](finding_kind kind, std::string text) { findings_.push_back({kind, std::move(text)}); };
+    double const drawn = static_cast<double>(n_.drawn);
+    if (n_.effective_size < 50.0)
+      say(finding_kind::few_effective,
+          "The weights are worth only " + short_number(n_.effective_size) + " equal draws out of " +
+              short_number(drawn) + ": draw more, or use a tempered run if the reading is this sharp.");
+    if (n_.largest_share > 0.1)
+      say(finding_kind::one_dominates, "One sample holds " + short_number(100.0 * n_.largest_share) +
+                                           " % of the weight: what it says is nearly the whole answer.");
+    if (share_of_zeros() > 0.5)
+      say(finding_kind::many_zeros, short_number(100.0 * share_of_zeros()) +
+                                        " % of the states are impossible under the reading: check its limits, or let "
+                                        "the simulator draw closer to what was read.");
+    if (n_.failed > 0) {
+      double const share = static_cast<double>(n_.failed) / drawn;
+      double const mean_size = n_.effective_size > 0.0 ? n_.largest_share : 0.0;
+      double const worst = static_cast<double>(n_.failed) * mean_size;
+      say(finding_kind::failed_runs,
+          std::to_string(n_.failed) + " of " + std::to_string(n_.drawn) + " runs (" + short_number(100.0 * share) +
+              " %) failed and were set aside. Had each been as likely as the best state seen, they would hold " +
+              short_number(100.0 * worst / (1.0 + worst)) +
+              " % of the weight: at worst every probability could move by that much. Find out whether they fail where "
+              "the reading points.");
+    }
+    if (n_.groups > 0.0 && n_.groups < 8.0)
+      say(finding_kind::few_groups, "There are only " + short_number(n_.groups) +
+                                        " independent groups: an error bar wants at least 8 of them.");
+  }
+
+  numbers n_;
+  std::vector<finding> findings_;
+};
+
+/// Plain sentences: what the weights carry, then each finding.
+[[nodiscard]] inline std::string to_string(diagnosis const& d) {
+  using detail::short_number;
+  std::string text = std::to_string(d.drawn()) + " samples are worth " + short_number(d.effective_size()) +
+                     " equal ones; the heaviest holds " + short_number(100.0 * d.largest_share()) + " % of the weight.";
+  text += d.verdict() == verdict::sound      ? " The weights can carry questions."
+          : d.verdict() == verdict::strained ? " The weights are strained: take answers as orders of magnitude."
+                                             : " The weights are broken: do not use the answers.";
+  for (finding const& each : d.findings()) text += "\n" + each.text;
+  return text;
+}
+
+template <class Char, class Traits>
+std::basic_ostream<Char, Traits>& operator<<(std::basic_ostream<Char, Traits>& out, diagnosis const& d) {
+  return out << to_string(d).c_str();
+}
+
+}  // namespace steelyard::inline v1

@@ -1,0 +1,130 @@
+// SPDX-License-Identifier: BSL-1.0
+#pragma once
+
+#include <cstddef>
+#include <memory>
+#include <span>
+#include <tuple>
+#include <utility>
+#include <vector>
+
+#include <steelyard/base/error.hpp>
+#include <steelyard/base/text.hpp>
+#include <steelyard/estimate/estimator.hpp>
+#include <steelyard/estimate/quantile_result.hpp>
+
+namespace steelyard::inline v1 {
+
+namespace detail {
+
+/// Takes in the whole of a kept sample: what quantiles and intervals share.
+template <class Readout>
+class column_estimator {
+ public:
+  static constexpr bool own_error = true;
+  static constexpr bool needs_all = true;
+  static constexpr std::size_t columns = 1;
+
+  explicit column_estimator(Readout its_readout) : readout_(std::move(its_readout)) {}
+
+  [[nodiscard]] Readout const& readout() const noexcept { return readout_; }
+
+  void add(std::span<double const>, std::span<double const>, weighted_view const& view) {
+    values_.assign(view.values.begin(), view.values.end());
+    weights_.assign(view.weights.begin(), view.weights.end());
+    counts_.assign(view.counts.begin(), view.counts.end());
+    groups_.assign(view.groups.begin(), view.groups.end());
+  }
+  void rescale(double factor) {
+    for (double& each : weights_) each *= factor;
+  }
+  column_estimator& operator+=(column_estimator const& other) {
+    values_.insert(values_.end(), other.values_.begin(), other.values_.end());
+    weights_.insert(weights_.end(), other.weights_.begin(), other.weights_.end());
+    counts_.insert(counts_.end(), other.counts_.begin(), other.counts_.end());
+    groups_.insert(groups_.end(), other.groups_.begin(), other.groups_.end());
+    return *this;
+  }
+  template <class Self>
+  static auto fields(Self& self) {
+    return std::tie(self.values_, self.weights_, self.counts_, self.groups_);
+  }
+
+ protected:
+  [[nodiscard]] std::shared_ptr<weighted_column const> column(run_facts const& facts) const {
+    weighted_view view;
+    view.values = values_;
+    view.weights = weights_;
+    view.counts = counts_;
+    view.groups = groups_;
+    return std::make_shared<weighted_column const>(view, facts);
+  }
+
+ private:
+  Readout readout_;
+  std::vector<double> values_, weights_;
+  std::vector<std::uint64_t> counts_;
+  std::vector<std::uint32_t> groups_;
+};
+
+inline double checked_level(char const* where, double level) {
+  if (!(level > 0.0 && level < 1.0))
+    throw bad_argument(std::string(where) + ": " + plain_number(level) + " is outside (0, 1)");
+  return level;
+}
+
+}  // namespace detail
+
+/// Quantile of a scalar readout on a kept sample: inf{x : F(x) >= p}.
+/// Memory: 16 bytes an entry of positive weight.
+template <class Readout>
+class quantile_estimator : public detail::column_estimator<Readout> {
+ public:
+  quantile_estimator(Readout its_readout, double p)
+      : detail::column_estimator<Readout>(std::move(its_readout)), p_(detail::checked_level("quantile", p)) {}
+
+  [[nodiscard]] quantile_estimator fresh() const { return {this->readout(), p_}; }
+  [[nodiscard]] quantile_result answer(run_facts const& facts) const { return {this->column(facts), p_}; }
+
+ private:
+  double p_;
+};
+
+/// The p-quantile of a readout. @throws bad_argument unless 0 < p < 1.
+template <class Readout>
+[[nodiscard]] auto quantile(Readout readout, double p) {
+  return quantile_estimator<Readout>(std::move(readout), p);
+}
+
+/// A coverage interval of the quantity itself: both ends are estimates.
+struct interval_result {
+  quantile_result lower;
+  quantile_result upper;
+
+  operator interval() const noexcept { return {lower.value, upper.value, true, true}; }  // NOLINT: implicit on purpose
+};
+
+/// Equal-tailed coverage interval on a kept sample: the quantiles at (1 -+ level)/2.
+template <class Readout>
+class coverage_interval_estimator : public detail::column_estimator<Readout> {
+ public:
+  coverage_interval_estimator(Readout its_readout, double level)
+      : detail::column_estimator<Readout>(std::move(its_readout)), level_(detail::checked_level("coverage_interval", level)) {}
+
+  [[nodiscard]] coverage_interval_estimator fresh() const { return {this->readout(), level_}; }
+  [[nodiscard]] interval_result answer(run_facts const& facts) const {
+    auto const column = this->column(facts);
+    return {quantile_result(column, 0.5 * (1.0 - level_)), quantile_result(column, 0.5 * (1.0 + level_))};
+  }
+
+ private:
+  double level_;
+};
+
+/// Equal-tailed coverage interval of a readout. @throws bad_argument unless 0 < level < 1.
+template <class Readout>
+[[nodiscard]] auto coverage_interval(Readout readout, double level) {
+  return coverage_interval_estimator<Readout>(std::move(readout), level);
+}
+
+}  // namespace steelyard::inline v1

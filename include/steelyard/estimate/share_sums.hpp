@@ -1,0 +1,135 @@
+// SPDX-License-Identifier: BSL-1.0
+#pragma once
+
+#include <array>
+#include <cstddef>
+#include <cstdint>
+#include <tuple>
+#include <vector>
+
+#include <steelyard/base/algorithm.hpp>
+#include <steelyard/estimate/estimate.hpp>
+#include <steelyard/estimate/group_sums.hpp>
+#include <steelyard/estimate/run_facts.hpp>
+
+namespace steelyard::inline v1::detail {
+
+/// Powers of the weights that fell into one of K cells, cells without overlap:
+/// sum m w, sum m w^2, sum m w^4 and the number of entries.
+struct cell_sums {
+  double weight = 0.0, second = 0.0, fourth = 0.0;
+  double entries = 0.0;
+
+  void add(double count, double w) noexcept {
+    double const w2 = w * w;
+    weight += count * w;
+    second += count * w2;
+    fourth += count * (w2 * w2);
+    entries += count;
+  }
+  void rescale(double factor) noexcept {
+    double const square = factor * factor;
+    weight *= factor;
+    second *= square;
+    fourth *= square * square;
+  }
+  cell_sums& operator+=(cell_sums const& other) noexcept {
+    weight += other.weight;
+    second += other.second;
+    fourth += other.fourth;
+    entries += other.entries;
+    return *this;
+  }
+};
+
+/// Share p of one cell, or of several, against the rest of a whole:
+///   sum u^2 = (1-p)^2 Q_in + p^2 Q_out, sums of terms that are never negative.
+/// @param largest   largest u_g^2 where there are groups (see `group_terms`)
+inline error_terms share_terms(cell_sums const& in, cell_sums const& out) noexcept {
+  double const total = in.weight + out.weight;
+  error_terms terms;
+  if (!(total > 0.0)) return terms;
+  double const p = in.weight / total, q = out.weight / total, scale = 1.0 / (total * total);
+  terms.sum_squares = (q * q * in.second + p * p * out.second) * scale;
+  terms.sum_fourth = (q * q * q * q * in.fourth + p * p * p * p * out.fourth) * scale * scale;
+  return terms;
+}
+
+/// Weight that each group has in each cell: cells are kept sparsely, as one
+/// label for each pair of group and cell that occurs.
+class grouped_cells {
+ public:
+  void add(std::uint32_t group, std::uint32_t cell, double weight) { entries_.push_back({group, cell, weight}); }
+  [[nodiscard]] bool empty() const noexcept { return entries_.empty(); }
+
+  void settle() {
+    auto const before = [](entry const& a, entry const& b) {
+      return a.group != b.group ? a.group < b.group : a.cell < b.cell;
+    };
+    std::stable_sort(entries_.begin(), entries_.end(), before);
+    std::size_t kept = 0;
+    for (std::size_t i = 0; i < entries_.size(); ++i) {
+      if (kept > 0 && entries_[kept - 1].group == entries_[i].group && entries_[kept - 1].cell == entries_[i].cell)
+        entries_[kept - 1].weight += entries_[i].weight;
+      else
+        entries_[kept++] = entries_[i];
+    }
+    entries_.resize(kept);
+  }
+  void rescale(double factor) {
+    for (entry& each : entries_) each.weight *= factor;
+  }
+  grouped_cells& operator+=(grouped_cells const& other) {
+    entries_.insert(entries_.end(), other.entries_.begin(), other.entries_.end());
+    settle();
+    return *this;
+  }
+
+  /// Terms of the share of the cells chosen by `in`, within those chosen by `whole`.
+  template <class In, class Whole>
+  [[nodiscard]] error_terms terms(In in, Whole whole) const {
+    double inside = 0.0, total = 0.0;
+    for (entry const& each : entries_)
+      if (whole(each.cell)) {
+        total += each.weight;
+        if (in(each.cell)) inside += each.weight;
+      }
+    error_terms terms;
+    if (!(total > 0.0)) return terms;
+    double const p = inside / total;
+    for (std::size_t i = 0; i < entries_.size();) {
+      double u = 0.0;
+      std::uint32_t const group = entries_[i].group;
+      for (; i < entries_.size() && entries_[i].group == group; ++i)
+        if (whole(entries_[i].cell)) u += entries_[i].weight * ((in(entries_[i].cell) ? 1.0 : 0.0) - p);
+      double const square = (u / total) * (u / total);
+      terms.sum_squares += square;
+      terms.sum_fourth += square * square;
+      terms.largest_square = std::max(terms.largest_square, square);
+    }
+    return terms;
+  }
+
+  template <class Self>
+  static auto fields(Self& self) {
+    return std::tie(self.entries_);
+  }
+
+ private:
+  struct entry {
+    std::uint32_t group;
+    std::uint32_t cell;
+    double weight;
+  };
+  std::vector<entry> entries_;
+};
+
+/// A share as an estimate: on the logit scale, one-sided where all or nothing fell in.
+inline estimate share_estimate(double in, double out, error_terms const& terms, bool seen, bool missed,
+                               run_facts const& facts) {
+  if (!seen) return estimate::one_sided(false, facts);
+  if (!missed) return estimate::one_sided(true, facts);
+  return estimate(in / (in + out), terms, facts, error_scale::logit);
+}
+
+}  // namespace steelyard::inline v1::detail

@@ -1,0 +1,346 @@
+// SPDX-License-Identifier: BSL-1.0
+#pragma once
+
+#include <cstddef>
+#include <cstdint>
+#include <memory>
+#include <string>
+#include <tuple>
+#include <type_traits>
+#include <utility>
+#include <vector>
+
+#include <steelyard/base/algorithm.hpp>
+#include <steelyard/run/front_door.hpp>
+#include <steelyard/run/plan.hpp>
+#include <steelyard/run/replay_store.hpp>
+#include <steelyard/run/rounds.hpp>
+#include <steelyard/run/run_worker.hpp>
+#include <steelyard/run/slots.hpp>
+#include <steelyard/run/threads.hpp>
+#include <steelyard/sample/resample.hpp>
+#include <steelyard/sample/weigh.hpp>
+
+namespace steelyard::inline v1 {
+
+/// A sampler and a weighter, ready to run.
+///   sampler:  state X(draws&), or std::optional of one where a run may fail
+///   weighter: log_likelihood or likelihood (X const&), or itemised
+/// Both are stored by value and called as const, perhaps from several threads at once.
+template <class Sampler, class Weighter>
+class pipeline {
+  static constexpr bool fits = detail::may_pipe<true, Sampler, Weighter>();
+
+ public:
+  using state_type = std::conditional_t<fits, state_of_t<Sampler>, int>;
+
+  pipeline(Sampler draw_with, Weighter weigh_with) : sampler_(std::move(draw_with)), weighter_(std::move(weigh_with)) {}
+
+  [[nodiscard]] Sampler const& sampler() const noexcept { return sampler_; }
+  [[nodiscard]] Weighter const& weighter() const noexcept { return weighter_; }
+
+  /// Draws and weighs; keeps the states, or their streams.
+  /// @throws failed_sample where a user's function throws, bad_weight, no_likelihood, bad_argument, stopped_early
+  weighted_sample<state_type> run(plan const& how) const {
+    if constexpr (fits) {
+      auto origin = std::make_shared<detail::sample_origin>();
+      start(*origin, how);
+      detail::kept_part<state_type> part;
+      draw(how, 0, *origin, part);
+      return assemble(std::move(origin), std::move(part), how.keep);
+    } else {
+      throw error("pipeline: not usable");
+    }
+  }
+
+  /// `more` further samples, drawn as the sample's own run drew; states are moved when nobody else holds them,
+  /// copied when they can be, and made again otherwise.
+  weighted_sample<state_type> extend(weighted_sample<state_type> sample, count more) const {
+    if constexpr (fits) {
+      if (sample.origin()->how == how_drawn::labelled || !sample.origin()->counts.empty())
+        throw bad_argument("extend: this sample was not drawn by a pipeline; weigh the longer ensemble instead");
+      auto origin = std::make_shared<detail::sample_origin>(*sample.origin());
+      origin->findings.clear();
+      plan how;
+      how.size = origin->drawn + more;
+      how.seed = origin->seed;
+      how.source = origin->source;
+      how.on_failure = origin->on_failure;
+      how.executor = origin->execute;
+      how.keep = sample.store()->data() != nullptr ? keeping::states : keeping::streams;
+      refuse_size(how);
+      detail::kept_part<state_type> part = taken_apart(std::move(sample), how);
+      std::uint64_t const from = origin->drawn;
+      draw(how, from, *origin, part);
+      return assemble(std::move(origin), std::move(part), how.keep);
+    } else {
+      throw error("pipeline: not usable");
+    }
+  }
+
+  /// Answers in one pass and constant memory: no state is kept.
+  template <class... Es>
+  auto estimate(plan const& how, Es const&... questions) const {
+    constexpr bool fine = fits && (detail::may_ask<true, Es, state_type, true>() && ...);
+    if constexpr (fine)
+      return pass(how, std::tuple<detail::bound_t<Es, state_type>...>(detail::for_state<state_type>(questions)...));
+  }
+
+  template <class Readout>
+  auto expectation(plan const& how, Readout readout) const {
+    return one(how, steelyard::expectation(std::move(readout)));
+  }
+  template <class Event>
+  auto probability(plan const& how, Event event) const {
+    return one(how, steelyard::probability(std::move(event)));
+  }
+  template <class Readout, class Edges = automatic_bins_t>
+  auto histogram(plan const& how, Readout readout, Edges edges = {}) const {
+    return one(how, steelyard::histogram(std::move(readout), std::move(edges)));
+  }
+  template <class First, class Second>
+  auto difference(plan const& how, First first, Second second) const {
+    return one(how, steelyard::difference(std::move(first), std::move(second)));
+  }
+  template <class Top, class Bottom>
+  auto ratio(plan const& how, Top top, Bottom bottom) const {
+    return one(how, steelyard::ratio(std::move(top), std::move(bottom)));
+  }
+  auto log_evidence(plan const& how) const { return one(how, steelyard::log_evidence()); }
+
+  /// k states in proportion to their weights, in one pass: their streams are kept, and the states made again.
+  ensemble<state_type> resample(plan const& how, count k) const {
+    if constexpr (fits) {
+      if (k == 0u) throw bad_argument("resample: 0 states were asked for; at least one is allowed");
+      auto const answers = pass(how, std::tuple(detail::slots_estimator(static_cast<std::size_t>(k.value()), how.seed)));
+      detail::slots_result const& slots = answers.template get<0>();
+      std::vector<std::size_t> const samples(slots.samples.begin(), slots.samples.end());
+      auto replays = std::make_shared<detail::replay_store<Sampler> const>(sampler_, terms(how),
+                                                                          std::make_shared<detail::sample_origin>());
+      auto [states, places] = detail::gathered<state_type>(replays, samples);
+      return ensemble<state_type>(std::move(states), std::move(places), samples, slots.weights,
+                                  answers.diagnosis().effective_size());
+    } else {
+      throw error("pipeline: not usable");
+    }
+  }
+
+  /// The state of sample i, or the exception its sampler throws.
+  state_type replay(plan const& how, count i) const {
+    if constexpr (fits) {
+      detail::run_terms const from = terms(how);
+      draws source(how.seed);
+      detail::seat_on_sample(source, from, i);
+      decltype(auto) call = detail::instance_of<Sampler>::make(sampler_);
+      if constexpr (detail::unwrap_optional<detail::result_t<Sampler, draws&>>::may_be_empty) {
+        auto drawn = std::invoke(call, source);
+        if (!drawn.has_value())
+          throw failed_sample("replay: the sampler of sample " + std::to_string(i.value()) + " returned no state", i);
+        return *std::move(drawn);
+      } else {
+        return std::invoke(call, source);
+      }
+    } else {
+      throw error("pipeline: not usable");
+    }
+  }
+
+ private:
+  using maker_t = detail::maker<Sampler, Weighter>;
+
+  static detail::run_terms terms(plan const& how) { return {how.seed, how.source, how.on_failure}; }
+
+  static void refuse_size(plan const& how) {
+    if (how.size == 0u) throw bad_argument("plan: size is 0; at least one sample is needed");
+    if (!how.source.allows(how.size))
+      throw bad_argument("plan: size " + std::to_string(how.size.value()) + " does not suit the source of words, which allows " +
+                         how.source.sizes());
+  }
+  static void start(detail::sample_origin& origin, plan const& how) {
+    refuse_size(how);
+    origin.seed = how.seed;
+    origin.source = how.source;
+    origin.on_failure = how.on_failure;
+    origin.execute = how.executor ? how.executor : on_threads(how.threads);
+    if (how.source.replicates() > 0) {
+      origin.how = how_drawn::replicated;
+      origin.group_shares.assign(static_cast<std::size_t>(how.source.replicates()),
+                                 1.0 / static_cast<double>(how.source.replicates()));
+    }
+  }
+
+  /// Replays the probed samples; where states are made again later, a difference is an error.
+  template <class Maker>
+  static void check_replay(Maker& making, detail::run_shared const& shared, detail::sample_origin& origin, bool must_agree) {
+    std::uint64_t differs = 0;
+    auto const [calls, agree] = detail::replay_agrees(making, shared, differs);
+    origin.calls += calls;
+    if (agree) return;
+    if (must_agree) throw hidden_state("run: " + detail::hidden_state_text(differs));
+    origin.findings.push_back({finding_kind::hidden_state, detail::hidden_state_text(differs)});
+  }
+
+  /// Draws samples from `from` on and appends them to `part`.
+  void draw(plan const& how, std::uint64_t from, detail::sample_origin& origin, detail::kept_part<state_type>& part) const {
+    using worker = detail::keeping_worker<Sampler, Weighter>;
+    detail::run_shared shared;
+    shared.terms = terms(how);
+    shared.size = how.size;
+    shared.probed = detail::probed_samples(how.size);
+    shared.failed = 0;
+    detail::worker_pool<worker> pool([&] { return std::make_unique<worker>(sampler_, weighter_, shared); });
+    bool const keep_states = how.keep == keeping::states;
+    std::size_t const room = static_cast<std::size_t>(how.size.value());
+    if (how.time_limit.count() == 0 && !how.token.stop_possible()) {
+      if (keep_states) part.states.reserve(room);
+      part.log_weights.reserve(room);
+    }
+    std::uint64_t const done = from / detail::block_size;
+    detail::rounds all(how, done, how.size);
+    all.each(
+        [&](std::uint64_t first, std::uint64_t last) {
+          std::vector<detail::stretch> const tasks = detail::stretches(first, last, detail::longest_stretch);
+          std::vector<detail::kept_part<state_type>> parts(tasks.size());
+          detail::first_failure failure;
+          origin.execute(tasks.size(), [&](std::size_t t) {
+            failure.guard(tasks[t].first * detail::block_size, [&] {
+              auto const own = pool.take();
+              for (std::uint64_t b = tasks[t].first; b < tasks[t].first + (std::uint64_t{1} << tasks[t].level); ++b) {
+                if (failure.before(b * detail::block_size)) return;
+                own->fill(b, keep_states, from, parts[t]);
+              }
+            });
+          });
+          failure.rethrow();
+          for (auto& each : parts) part.append(std::move(each));
+        },
+        [&] { return shared.failed; });
+    std::uint64_t const redone = from % detail::block_size;
+    origin.calls += all.drawn() - (from - redone);
+    origin.failed = all.drawn() - part.samples.size();
+    origin.drawn = all.drawn();
+    origin.findings.insert(origin.findings.end(), all.findings().begin(), all.findings().end());
+    if (from == 0) {
+      auto const own = pool.take();
+      check_replay(own->making(), shared, origin, !keep_states);
+    }
+    if (part.samples.empty())
+      throw no_likelihood("run: every one of the " + std::to_string(origin.drawn) +
+                          " runs of the sampler failed and was set aside; there is nothing to weigh");
+  }
+
+  weighted_sample<state_type> assemble(std::shared_ptr<detail::sample_origin> origin, detail::kept_part<state_type> part,
+                                       keeping keep) const {
+    detail::sample_columns columns;
+    for (std::size_t k = 0; k < maker_t::items; ++k) columns.names.push_back(detail::item_name(weighter_, k));
+    columns.log_weights = std::move(part.log_weights);
+    columns.scores = std::move(part.scores);
+    if constexpr (detail::bounded_weighter<Weighter>) {
+      columns.bound_known = true;
+      columns.log_bound = weighter_.log_bound();
+    }
+    if (origin->how == how_drawn::replicated) {
+      origin->groups.clear();
+      for (std::uint64_t const i : part.samples) origin->groups.push_back(static_cast<std::uint32_t>(origin->source.replicate_of(i)));
+    }
+    origin->samples = origin->failed > 0 ? std::move(part.samples) : std::vector<std::uint64_t>();
+    std::shared_ptr<detail::sample_origin const> const settled = std::move(origin);
+    std::shared_ptr<detail::state_store<state_type> const> states;
+    using array = detail::state_array<state_type>;
+    if (keep == keeping::states)
+      states = std::make_shared<detail::kept_states<state_type, array>>(std::move(part.states));
+    else
+      states = std::make_shared<detail::replay_store<Sampler>>(
+          sampler_, detail::run_terms{settled->seed, settled->source, settled->on_failure}, settled);
+    return weighted_sample<state_type>(std::move(states), std::move(columns), settled, "run");
+  }
+
+  /// The columns of a sample and its states, to be added to.
+  detail::kept_part<state_type> taken_apart(weighted_sample<state_type> sample, plan const& how) const {
+    using array = detail::state_array<state_type>;
+    detail::kept_part<state_type> part;
+    detail::sample_columns const& columns = sample.columns();
+    auto const same_names = [&] {
+      for (std::size_t k = 0; k < maker_t::items; ++k)
+        if (columns.names.size() != maker_t::items || columns.names[k] != detail::item_name(weighter_, k)) return false;
+      return true;
+    };
+    if (!columns.base.empty() || !same_names())
+      throw bad_argument("extend: this sample was weighed by another weighter than this pipeline's; extend it before reweighing");
+    part.log_weights = columns.log_weights;
+    if (maker_t::items > 1) part.scores = columns.scores;
+    for (std::size_t i = 0; i < sample.size(); ++i) part.samples.push_back(sample.sample_index(i));
+    if (how.keep != keeping::states) return part;
+    std::size_t const size = sample.size();
+    auto const shared = std::const_pointer_cast<detail::state_store<state_type>>(sample.store());
+    auto* const own = dynamic_cast<detail::kept_states<state_type, array>*>(shared.get());
+    bool const alone = sample.store().use_count() == 2;  // the sample's own handle and `shared`
+    if (own != nullptr && alone) {
+      part.states = std::move(own->holder());
+    } else if constexpr (std::is_copy_constructible_v<state_type>) {
+      for (std::size_t i = 0; i < size; ++i) part.states.emplace_back(shared->data()[i]);
+    } else {
+      for (std::uint64_t const i : part.samples) part.states.emplace_back(replay(how, i));
+    }
+    return part;
+  }
+
+  template <class E>
+  auto one(plan const& how, E const& question) const {
+    constexpr bool fine = fits && detail::may_ask<true, E, state_type, true>();
+    if constexpr (fine)
+      return pass(how, std::tuple<detail::bound_t<E, state_type>>(detail::for_state<state_type>(question))).template get<0>();
+  }
+
+  template <class... Es>
+  auto pass(plan const& how, std::tuple<Es...> const& bound) const {
+    using worker = detail::run_worker<Sampler, Weighter, Es...>;
+    detail::sample_origin origin;
+    start(origin, how);
+    detail::run_shared shared;
+    shared.terms = terms(how);
+    shared.size = how.size;
+    shared.probed = detail::probed_samples(how.size);
+    detail::worker_pool<worker> pool([&] { return std::make_unique<worker>(sampler_, weighter_, shared, bound); });
+    detail::sweep<state_type, Es...> sweep(bound);
+    detail::rounds all(how, 0, how.size);
+    all.each([&](std::uint64_t first, std::uint64_t last) { sweep.take(first, last, origin.execute, pool); },
+             [&] { return shared.failed; });
+    origin.drawn = origin.calls = all.drawn();
+    origin.failed = shared.failed;
+    origin.findings = all.findings();
+    {
+      auto const own = pool.take();
+      check_replay(own->making(), shared, origin, false);
+    }
+    auto const merged = sweep.finish();
+    detail::weight_totals const& totals = merged->totals;
+    if (!(totals.maximum > detail::impossible)) {
+      detail::sample_columns seen;
+      for (std::size_t k = 0; k < maker_t::items; ++k) {
+        seen.names.push_back(detail::item_name(weighter_, k));
+        seen.scores.push_back({shared.largest.empty() ? detail::impossible : shared.largest[k]});
+      }
+      throw no_likelihood(detail::no_likelihood_text("estimate", seen, origin));
+    }
+    run_facts facts = detail::facts_of(totals, origin);
+    if constexpr (detail::bounded_weighter<Weighter>) {
+      facts.bound_known = true;
+      facts.log_bound = weighter_.log_bound();
+    }
+    if (facts.groups > 0.0) facts.largest_unit = std::max(facts.largest_unit, 1.0 / facts.groups);
+    detail::group_facts const grouping = origin.grouping();
+    return std::apply(
+        [&](auto const&... slot) {
+          auto each = std::make_tuple(slot.answer(facts, grouping)...);
+          return answers<std::remove_cvref_t<decltype(slot.answer(facts, grouping))>...>(
+              std::move(each), detail::diagnosis_of(totals, origin, origin.findings), origin.drawn, origin.calls);
+        },
+        merged->slots);
+  }
+
+  Sampler sampler_;
+  Weighter weighter_;
+};
+
+}  // namespace steelyard::inline v1

@@ -1,0 +1,200 @@
+// SPDX-License-Identifier: BSL-1.0
+#pragma once
+
+#include <cmath>
+#include <cstddef>
+#include <cstdint>
+#include <functional>
+#include <iterator>
+#include <memory>
+#include <span>
+#include <string>
+#include <utility>
+#include <vector>
+
+#include <steelyard/base/algorithm.hpp>
+#include <steelyard/estimate/estimate.hpp>
+#include <steelyard/estimate/mean_sums.hpp>
+#include <steelyard/estimate/share_sums.hpp>
+#include <steelyard/sample/scheme.hpp>
+#include <steelyard/sample/state_store.hpp>
+#include <steelyard/weigh/concepts.hpp>
+
+namespace steelyard::inline v1 {
+
+template <class X>
+class weighted_sample;
+
+namespace detail {
+
+template <class X>
+std::vector<double> plain_weights(weighted_sample<X> const& sample);
+
+/// Error of a mean over k slots that were drawn from a weighted sample: the
+/// parent's own error and that of the resampling, which are independent.
+inline estimate resampled_estimate(double value, estimate const& parent, double variance, double carriers, double k,
+                                   bool event) {
+  double const own = parent.standard_error * parent.standard_error;
+  run_facts facts;
+  facts.drawn = 0;
+  facts.sum = parent.effective_size;
+  facts.sum_squares = parent.effective_size;
+  facts.how = how_drawn::labelled;
+  facts.group_share_squares = 0.0;
+  facts.groups = estimate::few_groups + 1.0;  // more units than few: carriers decide
+  if (event && (value == 0.0 || value == 1.0)) {
+    facts.groups = 0.0;
+    facts.largest_unit = 1.0 / k + (parent.effective_size > 0.0 ? 1.0 / parent.effective_size : 1.0);
+    return estimate::one_sided(value == 1.0, facts);
+  }
+  error_terms terms;
+  terms.sum_squares = own + variance;
+  terms.sum_fourth = (parent.carriers > 0.0 ? own * own / parent.carriers : 0.0) +
+                     (carriers > 0.0 ? variance * variance / carriers : 0.0);
+  return estimate(value, terms, facts, event ? error_scale::logit : error_scale::linear);
+}
+
+}  // namespace detail
+
+/// Equally weighted states that stand for a weighted sample: slots that refer to
+/// shared states. A random-access range of `X const&`.
+template <class X>
+class ensemble {
+ public:
+  using value_type = X;
+
+  class iterator {
+   public:
+    using iterator_category = std::random_access_iterator_tag;
+    using value_type = X;
+    using difference_type = std::ptrdiff_t;
+    using pointer = X const*;
+    using reference = X const&;
+
+    iterator() = default;
+    iterator(ensemble const* of, std::size_t at) : of_(of), at_(at) {}
+    reference operator*() const { return (*of_)[at_]; }
+    pointer operator->() const { return &(*of_)[at_]; }
+    reference operator[](difference_type n) const { return *(*this + n); }
+    iterator& operator++() { return *this += 1; }
+    iterator& operator--() { return *this += -1; }
+    iterator operator++(int) {
+      iterator const old = *this;
+      ++*this;
+      return old;
+    }
+    iterator operator--(int) {
+      iterator const old = *this;
+      --*this;
+      return old;
+    }
+    iterator& operator+=(difference_type n) {
+      at_ = static_cast<std::size_t>(static_cast<difference_type>(at_) + n);
+      return *this;
+    }
+    iterator& operator-=(difference_type n) { return *this += -n; }
+    friend iterator operator+(iterator a, difference_type n) { return a += n; }
+    friend iterator operator+(difference_type n, iterator a) { return a += n; }
+    friend iterator operator-(iterator a, difference_type n) { return a -= n; }
+    friend difference_type operator-(iterator const& a, iterator const& b) {
+      return static_cast<difference_type>(a.at_) - static_cast<difference_type>(b.at_);
+    }
+    friend bool operator==(iterator const& a, iterator const& b) { return a.at_ == b.at_; }
+    friend auto operator<=>(iterator const& a, iterator const& b) { return a.at_ <=> b.at_; }
+
+   private:
+    ensemble const* of_ = nullptr;
+    std::size_t at_ = 0;
+  };
+
+  [[nodiscard]] std::size_t size() const noexcept { return indices_.size(); }
+  [[nodiscard]] X const& operator[](std::size_t slot) const noexcept { return states_->data()[places_[slot]]; }
+  [[nodiscard]] iterator begin() const noexcept { return {this, 0}; }
+  [[nodiscard]] iterator end() const noexcept { return {this, size()}; }
+
+  /// For each slot: which state of the parent it is; after a one-pass resample, which stream.
+  [[nodiscard]] std::span<std::size_t const> indices() const noexcept { return indices_; }
+  /// Each state that was drawn, in order, with how often.
+  [[nodiscard]] std::vector<std::pair<std::size_t, std::size_t>> copies() const {
+    std::vector<std::size_t> sorted(indices_.begin(), indices_.end());
+    std::sort(sorted.begin(), sorted.end());
+    std::vector<std::pair<std::size_t, std::size_t>> all;
+    for (std::size_t const i : sorted) {
+      if (all.empty() || all.back().first != i) all.emplace_back(i, 0);
+      ++all.back().second;
+    }
+    return all;
+  }
+
+  /// Mean over the slots, with the parent's error plus that of the resampling.
+  template <class Readout>
+  estimate expectation(Readout const& readout) const {
+    static_assert(readout_for<Readout, X>, "steelyard: expectation() takes a readout that returns one number");
+    return mean_of(readout, false);
+  }
+  /// Share of the slots where an event holds, with the parent's error plus that of the resampling.
+  template <class Event>
+  estimate probability(Event const& event) const {
+    static_assert(event_for<Event, X>, "steelyard: probability() takes an event: a readout that returns bool");
+    return mean_of(event, true);
+  }
+
+  /// @cond for the other parts of the library
+  /// Slots of a kept or replayed parent; `places` say where in `states` each slot lies.
+  ensemble(std::shared_ptr<detail::state_store<X> const> states, std::vector<std::size_t> places,
+           std::vector<std::size_t> indices, std::shared_ptr<weighted_sample<X> const> parent, steelyard::scheme how)
+      : states_(std::move(states)), places_(std::move(places)), indices_(std::move(indices)), parent_(std::move(parent)),
+        scheme_(how) {}
+  /// Slots of a one-pass run with the normalised weight of each slot's state.
+  ensemble(std::shared_ptr<detail::state_store<X> const> states, std::vector<std::size_t> places,
+           std::vector<std::size_t> indices, std::vector<double> weights, double effective_size)
+      : states_(std::move(states)), places_(std::move(places)), indices_(std::move(indices)), weights_(std::move(weights)),
+        effective_size_(effective_size), scheme_(steelyard::scheme::multinomial) {}
+  /// @endcond
+
+ private:
+  template <class Readout>
+  estimate mean_of(Readout const& readout, bool event) const {
+    double const k = static_cast<double>(size());
+    std::vector<double> values(size());
+    double mean = 0.0;
+    for (std::size_t s = 0; s < size(); ++s) {
+      values[s] = static_cast<double>(std::invoke(readout, (*this)[s]));
+      mean += (values[s] - mean) / static_cast<double>(s + 1);
+    }
+    double squares = 0.0, fourth = 0.0, weighted = 0.0, weighted_fourth = 0.0;
+    for (std::size_t s = 0; s < size(); ++s) {
+      double const d = (values[s] - mean) * (values[s] - mean);
+      squares += d;
+      fourth += d * d;
+      if (!weights_.empty()) {
+        weighted += weights_[s] * d;
+        weighted_fourth += (weights_[s] * d) * (weights_[s] * d) * weights_[s];
+      }
+    }
+    double const carriers = fourth > 0.0 ? squares * (squares / fourth) : 0.0;
+    double variance = k > 1.0 ? squares / (k * (k - 1.0)) : 0.0;
+    if (parent_) {
+      estimate const whole = parent_->expectation(readout);
+      if (scheme_ == steelyard::scheme::systematic)
+        variance = detail::systematic_variance(detail::plain_weights(*parent_), parent_->values(readout), size());
+      return detail::resampled_estimate(mean, whole, variance, carriers, k, event);
+    }
+    // Without the parent: sum W^2 d over it is the mean of W d over draws in proportion to W.
+    estimate whole;
+    whole.standard_error = std::sqrt(weighted / k);
+    whole.carriers = weighted_fourth > 0.0 ? (weighted / k) * (weighted / k) / (weighted_fourth / k) : 0.0;
+    whole.effective_size = effective_size_;
+    return detail::resampled_estimate(mean, whole, variance, carriers, k, event);
+  }
+
+  std::shared_ptr<detail::state_store<X> const> states_;
+  std::vector<std::size_t> places_;
+  std::vector<std::size_t> indices_;
+  std::vector<double> weights_;
+  double effective_size_ = 0.0;
+  std::shared_ptr<weighted_sample<X> const> parent_;
+  steelyard::scheme scheme_;
+};
+
+}  // namespace steelyard::inline v1

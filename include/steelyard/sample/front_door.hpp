@@ -1,0 +1,41 @@
+// SPDX-License-Identifier: BSL-1.0
+#pragma once
+
+#include <type_traits>
+
+#include <steelyard/estimate/estimator.hpp>
+
+namespace steelyard::inline v1::detail {
+
+/// Whether E can be asked of states of type X. With `Speak`, one sentence says
+/// what is wrong, and nothing behind it is instantiated.
+template <bool Speak, class E, class X, bool OnePass>
+consteval bool may_ask() {
+  if constexpr (!estimator<E>) {
+    static_assert(!Speak || estimator<E>,
+                  "steelyard: this is not an estimator: ask expectation(f), probability(f), ... or write one with "
+                  "readout, fresh, add, rescale, +=, value and fields");
+    return false;
+  } else if constexpr (!reads_v<E, X>) {
+    static_assert(!Speak || reads_v<E, X>,
+                  "steelyard: this readout cannot read this state: it is called as const with one state and returns "
+                  "a number or a std::array of numbers");
+    return false;
+  } else if constexpr (OnePass && takes_everything<E>) {
+    static_assert(!Speak || !takes_everything<E>,
+                  "steelyard: this question needs all values at once: keep the sample with run() and ask it there");
+    return false;
+  } else if constexpr (requires { E::asks_an_event; }) {
+    constexpr bool event = event_for<std::remove_cvref_t<decltype(std::declval<E const&>().readout())>, X>;
+    static_assert(!Speak || event, "steelyard: probability() takes an event: a readout that returns bool");
+    return event;
+  } else if constexpr (requires { E::columns; }) {
+    constexpr bool scalar = columns_of<readouts_t<E>, X>::size == E::columns;
+    static_assert(!Speak || scalar, "steelyard: this question takes readouts that return one number each");
+    return scalar;
+  } else {
+    return true;
+  }
+}
+
+}  // namespace steelyard::inline v1::detail

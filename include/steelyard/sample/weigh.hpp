@@ -1,0 +1,130 @@
+// SPDX-License-Identifier: BSL-1.0
+#pragma once
+
+#include <concepts>
+#include <cstddef>
+#include <cstdint>
+#include <iterator>
+#include <memory>
+#include <span>
+#include <string>
+#include <type_traits>
+#include <utility>
+#include <vector>
+
+#include <steelyard/base/algorithm.hpp>
+#include <steelyard/base/bits.hpp>
+#include <steelyard/base/text.hpp>
+#include <steelyard/sample/resample.hpp>
+#include <steelyard/sample/weighted_sample.hpp>
+
+namespace steelyard::inline v1 {
+
+/// What may be known of an ensemble that some other program computed.
+struct weigh_options {
+  std::vector<double> prior_weights = {};         ///< one a state, zero or more; or
+  std::vector<double> log_prior_weights = {};     ///< their logarithms, minus infinity allowed
+  std::vector<std::uint64_t> counts = {};         ///< how many samples each state stands for
+  std::vector<std::uint32_t> groups = {};         ///< any labels: states of one label are not independent
+  steelyard::executor executor = {};              ///< how the states are scored; in turn unless given
+};
+
+namespace detail {
+
+/// True for array types with an overload of their own.
+template <class Range>
+inline constexpr bool weighed_as_array = false;
+
+inline void refuse_length(char const* what, std::size_t length, std::size_t size) {
+  if (length != 0 && length != size)
+    throw bad_argument(std::string("weigh: there are ") + std::to_string(length) + " " + what + " for " +
+                       std::to_string(size) + " states; one each is needed");
+}
+
+/// Base log-weights from prior weights or their logarithms; empty where neither is given.
+inline std::vector<double> base_of(weigh_options const& options) {
+  if (!options.prior_weights.empty() && !options.log_prior_weights.empty())
+    throw bad_argument("weigh: prior weights are given twice, plain and as logarithms; give one of them");
+  std::vector<double> base;
+  for (std::size_t i = 0; i < options.prior_weights.size(); ++i) {
+    double const w = options.prior_weights[i];
+    if (!is_finite(w) || w < 0.0)
+      throw bad_weight("weigh: the prior weight of state " + std::to_string(i) + " is " + plain_number(w) +
+                       "; it must be finite and zero or more");
+    base.push_back(w > 0.0 ? portable_log(w) : impossible);
+  }
+  for (std::size_t i = 0; i < options.log_prior_weights.size(); ++i) {
+    double const b = options.log_prior_weights[i];
+    if (!is_finite(b) && !is_minus_infinite(b))
+      throw bad_weight("weigh: the logarithm of the prior weight of state " + std::to_string(i) + " is " + plain_number(b) +
+                       "; it must be finite or minus infinity");
+    base.push_back(is_finite(b) ? b : impossible);
+  }
+  return base;
+}
+
+template <class X, class Holder, class Weighter>
+weighted_sample<X> weigh_states(Holder states, std::size_t size, Weighter const& weighter, weigh_options options) {
+  if (size == 0) throw bad_argument("weigh: the ensemble is empty; at least one state is needed");
+  refuse_length("prior weights", options.prior_weights.size(), size);
+  refuse_length("logarithms of prior weights", options.log_prior_weights.size(), size);
+  refuse_length("counts", options.counts.size(), size);
+  refuse_length("groups", options.groups.size(), size);
+  sample_columns prior;
+  prior.base = base_of(options);
+  prior.log_weights.assign(size, 0.0);
+  if (!prior.base.empty()) {
+    prior.base_maximum = *std::max_element(prior.base.begin(), prior.base.end());
+    if (!(prior.base_maximum > impossible)) throw no_likelihood("weigh: every prior weight is zero");
+  }
+  auto origin = std::make_shared<sample_origin>();
+  origin->execute = std::move(options.executor);
+  origin->counts = std::move(options.counts);
+  origin->take_labels(options.groups);
+  origin->how = options.groups.empty() ? how_drawn::independent : how_drawn::labelled;
+  origin->drawn = size;
+  if (!origin->counts.empty()) {
+    origin->drawn = 0;
+    for (std::uint64_t const m : origin->counts) origin->drawn += m;
+    if (origin->drawn == 0) throw no_likelihood("weigh: every count is zero");
+  }
+  auto store = std::make_shared<kept_states<X, Holder> const>(std::move(states));
+  sample_columns scored = score_states<X>(*store, prior, *origin, weighter);
+  return weighted_sample<X>(std::move(store), std::move(scored), std::move(origin), "weigh");
+}
+
+}  // namespace detail
+
+/// Weighs an ensemble as it stands: the states of a range, one after another.
+/// A vector passed as an rvalue is moved, `std::span<X const>` is borrowed and must outlive the sample, any
+/// other range is copied.
+/// @throws bad_argument  for an empty range or options of another length
+/// @throws bad_weight    for a likelihood or prior weight that is no number, negative or infinite
+/// @throws no_likelihood where no state has any
+template <class Range, class Weighter>
+  requires(!detail::weighed_as_array<Range> && requires(Range&& range) {
+    std::begin(range);
+    std::end(range);
+  })
+auto weigh(Range&& range, Weighter const& weighter, weigh_options options = {}) {
+  using X = std::remove_cvref_t<decltype(*std::begin(range))>;
+  static_assert(weighter_for<Weighter, X>, "steelyard: weigh() takes a weighter of these states: it is called as const "
+                                           "and returns log_likelihood or likelihood, never a bare number");
+  if constexpr (weighter_for<Weighter, X>) {
+    using R = std::remove_cvref_t<Range>;
+    if constexpr (std::is_same_v<R, std::span<X const>>) {
+      return detail::weigh_states<X>(range, range.size(), weighter, std::move(options));
+    } else if constexpr (std::is_same_v<R, std::vector<X>> && !std::is_same_v<X, bool> && !std::is_lvalue_reference_v<Range> &&
+                         !std::is_const_v<std::remove_reference_t<Range>>) {
+      std::size_t const size = range.size();
+      return detail::weigh_states<X>(std::move(range), size, weighter, std::move(options));
+    } else {
+      detail::state_array<X> copy;
+      for (auto&& each : range) copy.emplace_back(each);
+      std::size_t const size = copy.size();
+      return detail::weigh_states<X>(std::move(copy), size, weighter, std::move(options));
+    }
+  }
+}
+
+}  // namespace steelyard::inline v1
