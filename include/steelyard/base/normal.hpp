@@ -9,11 +9,12 @@
 
 namespace steelyard::inline v1::detail {
 
-/// Standard normal deviate z <= 0 with P(Z < z) = p, for a lower tail 0 < p <= 1/2.
-///   Rational approximations of degree 7, about 1 part in 10^16
-///   [Wichura, Algorithm AS 241 (PPND16), Applied Statistics 37(3), 1988]
-/// Cost  one division in the middle; a logarithm and a root more for p < 0.075.
-inline double normal_tail_quantile(double p) noexcept {
+// Standard normal deviates: rational approximations of degree 7, about 1 part in 10^16
+//   [Wichura, Algorithm AS 241 (PPND16), Applied Statistics 37(3), 1988]
+
+/// z with P(Z < z) = 1/2 + q, |q| <= 0.425.
+/// Cost  one division.
+inline double normal_middle_quantile(double q) noexcept {
   constexpr double a[8] = {3.3871328727963666080e0,  1.3314166789178437745e+2, 1.9715909503065514427e+3,
                            1.3731693765509461125e+4, 4.5921953931549871457e+4, 6.7265770927008700853e+4,
                            3.3430575583588128105e+4, 2.5090809287301226727e+3};
@@ -25,6 +26,13 @@ inline double normal_tail_quantile(double p) noexcept {
                            3.9307895800092710610e+4,
                            2.8729085735721942674e+4,
                            5.2264952788528545610e+3};
+  double const r = minus(0.180625, times(q, q));
+  return times(q, over(polynomial(a, r), polynomial(b, r)));
+}
+
+/// z < 0 with P(Z < z) = p for a lower tail 0 < p < 0.075.
+/// Cost  a logarithm, a root and a division.
+inline double normal_far_quantile(double p) noexcept {
   constexpr double c[8] = {1.42343711074968357734e0,  4.63033784615654529590e0,  5.76949722146069140550e0,
                            3.64784832476320460504e0,  1.27045825245236838258e0,  2.41780725177450611770e-1,
                            2.27238449892691845833e-2, 7.74545014278341407640e-4};
@@ -47,11 +55,6 @@ inline double normal_tail_quantile(double p) noexcept {
                            1.84631831751005468180e-5,
                            1.42151175831644588870e-7,
                            2.04426310338993978564e-15};
-  double const q = minus(p, 0.5);
-  if (q >= -0.425) {
-    double const r = minus(0.180625, times(q, q));
-    return times(q, over(polynomial(a, r), polynomial(b, r)));
-  }
   double const r = portable_sqrt(-portable_log(p));
   if (r <= 5.0) {
     double const s = minus(r, 1.6);
@@ -59,6 +62,12 @@ inline double normal_tail_quantile(double p) noexcept {
   }
   double const s = minus(r, 5.0);
   return -over(polynomial(e, s), polynomial(f, s));
+}
+
+/// z <= 0 with P(Z < z) = p for a lower tail 0 < p <= 1/2.
+inline double normal_tail_quantile(double p) noexcept {
+  double const q = minus(p, 0.5);
+  return q >= -0.425 ? normal_middle_quantile(q) : normal_far_quantile(p);
 }
 
 /// z with P(Z < z) = p, standard normal.
@@ -83,6 +92,7 @@ inline double normal_tail(double z) noexcept {
       -0x1.d6d49b470c3dep-17, 0x1.86b3123ac7963p-17, 0x1.63eb6b2c621fep-24, -0x1.c7bc1cf45ae5bp-20,
       0x1.24ba77bcf8591p-23, 0x1.14ad83fa9c30dp-22, -0x1.a6f66e8949dd7p-26, -0x1.5f63754b75583p-25,
       0x1.d186898855fd7p-34, 0x1.56ae0358bbc0dp-28, 0x1.0271c488757e7p-30};
+  if (z == 0.0) return 0.5;
   if (z > 38.6) return 0.0;
   double const height = polynomial(c, over(minus(z, 5.0), plus(z, 5.0)));
   // exp(-z^2/2) loses digits to the rounding of z^2: square the leading 26 bits exactly, the rest apart

@@ -28,11 +28,23 @@ inline tail tail_from_word(std::uint64_t word) noexcept {
   return {lower, times(plus(static_cast<double>(beyond), 0.5), 0x1p-64)};
 }
 
-/// Standard normal deviate, rising with the word.
+/// Standard normal deviate, rising with the word; ~word gives its mirror image.
+/// The middle is inverted from the word's distance to 2^63, so that deviates
+/// near zero keep their digits too.
 inline double normal_from_word(std::uint64_t word) noexcept {
-  tail const t = tail_from_word(word);
-  double const z = normal_tail_quantile(t.probability);
-  return t.lower ? z : -z;
+  bool const lower = word < sign_bit;
+  auto const distance = static_cast<std::int64_t>((lower ? ~word : word) ^ sign_bit);
+  double const q = times(plus(static_cast<double>(distance), 0.5), 0x1p-64);
+  double const z = q <= 0.425 ? normal_middle_quantile(q) : -normal_far_quantile(tail_from_word(word).probability);
+  return lower ? -z : z;
+}
+
+/// The word whose cell holds the standard normal deviate z, to within 2^-53 of
+/// the tail: the inverse of `normal_from_word`, clamped to its range.
+inline std::uint64_t word_from_normal(double z) noexcept {
+  double const p = times(normal_tail(z < 0.0 ? -z : z), 0x1p64);  // at most 2^63
+  std::uint64_t const cell = p < 0x1p63 ? static_cast<std::uint64_t>(p) : sign_bit - 1;
+  return z < 0.0 ? cell : ~cell;
 }
 
 /// Exponential deviate of rate 1, rising with the word.

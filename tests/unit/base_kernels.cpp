@@ -1,0 +1,228 @@
+// SPDX-License-Identifier: BSL-1.0
+#include <doctest/doctest.h>
+
+#include <steelyard/base/kernels.hpp>
+
+#include <boost/multiprecision/cpp_bin_float.hpp>
+
+#include <algorithm>
+#include <bit>
+#include <cmath>
+#include <cstdint>
+#include <limits>
+#include <span>
+#include <vector>
+
+namespace sy = steelyard::detail;
+using exact = boost::multiprecision::cpp_bin_float_50;
+
+namespace {
+
+constexpr double lowest = std::numeric_limits<double>::lowest();
+
+std::vector<sy::isa> widths() {
+  std::vector<sy::isa> all;
+  for (sy::isa const width : {sy::isa::plain, sy::isa::sse2, sy::isa::avx2, sy::isa::avx512})
+    if (width <= sy::widest_isa()) all.push_back(width);
+  return all;
+}
+
+bool keeps_subnormals() {
+  double volatile tiny = std::numeric_limits<double>::min();
+  double volatile half = 0.5;
+  return tiny * half > 0.0;
+}
+
+// A sequence that fills (0, 1) evenly: fractions of multiples of the golden ratio.
+struct even {
+  double u = 0.0;
+  double operator()() { return u = std::fmod(u + 0.6180339887498949, 1.0); }
+};
+
+// Log-weights below `top`: most near it, some far down, some that vanish, some impossible.
+std::vector<double> some_logs(std::size_t n, double top) {
+  even u;
+  std::vector<double> logs(n);
+  for (std::size_t k = 0; k < n; ++k) {
+    double const x = u();
+    logs[k] = top - (k % 7 == 3 ? 800.0 * x : 20.0 * x * x);
+    if (k % 11 == 5) logs[k] = lowest;
+    if (k % 97 == 13) logs[k] = top - 1e5 * x;
+  }
+  return logs;
+}
+
+bool same_bits(double a, double b) { return std::bit_cast<std::uint64_t>(a) == std::bit_cast<std::uint64_t>(b); }
+
+bool same_bits(std::span<double const> a, std::span<double const> b) {
+  for (std::size_t k = 0; k < a.size(); ++k)
+    if (!same_bits(a[k], b[k])) return false;
+  return a.size() == b.size();
+}
+
+double ulps(double got, exact const& want) {
+  int exponent = 0;
+  static_cast<void>(frexp(want, &exponent));
+  if (exponent < -1021) exponent = -1021;
+  return std::abs(static_cast<double>((exact(got) - want) / ldexp(exact(1), exponent - 53)));
+}
+
+}  // namespace
+
+TEST_CASE("weights and their sums have the same bits at every width, length and alignment") {
+  std::size_t const sizes[] = {0, 1, 2, 7, 8, 9, 15, 16, 17, 23, 24, 31, 100, 1000, 1023, 1024, 1025, 1032, 2047, 5000};
+  for (double const top : {0.0, 3.7, -1e5, 1e5})
+    for (std::size_t const size : sizes)
+      for (std::size_t const shift : {0u, 1u, 3u}) {
+        std::vector<double> const logs = some_logs(size + shift, top);
+        std::span<double const> const in(logs.data() + shift, size);
+        std::vector<double> plain(size);
+        auto const want = sy::weights_from_logs(in, top, plain, sy::isa::plain);
+        for (sy::isa const width : widths()) {
+          std::vector<double> out(size + shift + 1, -1.0);
+          auto const got = sy::weights_from_logs(in, top, std::span<double>(out.data() + shift, size), width);
+          bool const same = same_bits(std::span<double const>(out.data() + shift, size), plain) &&
+                            same_bits(got.sum, want.sum) && same_bits(got.sum_squares, want.sum_squares) &&
+                            same_bits(got.sum_logs, want.sum_logs) && out.back() == -1.0;
+          CHECK_MESSAGE(same, "width ", static_cast<int>(width), ", size ", size, ", shift ", shift, ", top ", top);
+        }
+      }
+}
+
+TEST_CASE("weights may replace their logarithms in place") {
+  std::vector<double> logs = some_logs(2000, 1.0);
+  std::vector<double> apart(2000);
+  auto const want = sy::weights_from_logs(logs, 1.0, apart);
+  auto const got = sy::weights_from_logs(logs, 1.0, logs);
+  CHECK(same_bits(logs, apart));
+  CHECK(same_bits(got.sum, want.sum));
+}
+
+TEST_CASE("each weight is portable_exp of its distance from the maximum, and 0 where impossible") {
+  for (double const top : {0.0, 3.7, -1e5, 1e300, -1e300}) {
+    std::vector<double> const logs = some_logs(3000, top);
+    std::vector<double> weights(3000);
+    for (sy::isa const width : widths()) {
+      sy::weights_from_logs(logs, top, weights, width);
+      bool same = true;
+      for (std::size_t k = 0; k < logs.size(); ++k)
+        same = same && same_bits(weights[k], logs[k] == lowest ? 0.0 : sy::portable_exp(sy::minus(logs[k], top)));
+      CHECK(same);
+    }
+  }
+}
+
+TEST_CASE("weights are within 1.1 ulp of Boost.Multiprecision, from 0 down to where they vanish") {
+  even u;
+  std::vector<double> logs(4000);
+  for (std::size_t k = 0; k < logs.size(); ++k) {
+    double const x = u();
+    logs[k] = k % 2 == 0 ? -745.1 * x : -4.0 * x;
+  }
+  std::vector<double> weights(logs.size());
+  for (sy::isa const width : widths()) {
+    sy::weights_from_logs(logs, 0.0, weights, width);
+    double worst = 0.0;
+    double at = 0.0;
+    for (std::size_t k = 0; k < logs.size(); ++k) {
+      if (logs[k] < -708.3 && !keeps_subnormals()) continue;
+      double const error = ulps(weights[k], exp(exact(logs[k])));
+      if (error > worst) worst = error, at = logs[k];
+    }
+    MESSAGE("width ", static_cast<int>(width), ": worst ", worst, " ulp at ", at);
+    CHECK(worst < 1.1);
+  }
+}
+
+TEST_CASE("the weights of a library exponential are close by") {
+  std::vector<double> const logs = some_logs(5000, 2.0);
+  std::vector<double> weights(5000);
+  auto const sums = sy::weights_from_logs(logs, 2.0, weights);
+  long double sum = 0.0L;
+  long double squares = 0.0L;
+  long double products = 0.0L;
+  for (std::size_t k = 0; k < logs.size(); ++k) {
+    double const d = logs[k] == lowest ? -1e6 : logs[k] - 2.0;
+    double const w = std::exp(d);
+    CHECK(std::abs(weights[k] - w) <= 3e-16 * w + 1e-320);
+    sum += w;
+    squares += static_cast<long double>(w) * w;
+    products += static_cast<long double>(w) * d;
+  }
+  CHECK(sums.sum == doctest::Approx(static_cast<double>(sum)).epsilon(1e-14));
+  CHECK(sums.sum_squares == doctest::Approx(static_cast<double>(squares)).epsilon(1e-14));
+  CHECK(sums.sum_logs == doctest::Approx(static_cast<double>(products)).epsilon(1e-14));
+}
+
+TEST_CASE("a sample without any likelihood has weights 0, not 1") {
+  for (sy::isa const width : widths()) {
+    std::vector<double> const logs(20, lowest);
+    std::vector<double> weights(20, -1.0);
+    auto const sums = sy::weights_from_logs(logs, sy::block_maximum(logs, width), weights, width);
+    CHECK(sums.sum == 0.0);
+    CHECK(sums.sum_squares == 0.0);
+    CHECK(sums.sum_logs == 0.0);
+    for (double const w : weights) CHECK(w == 0.0);
+  }
+}
+
+TEST_CASE("a constant added to every log-weight changes no bit where the shift is exact") {
+  std::vector<double> logs(1500);
+  std::vector<double> shifted(1500);
+  even u;
+  for (std::size_t k = 0; k < logs.size(); ++k) {
+    logs[k] = -std::round(u() * 1e6) * 0x1p-16;
+    shifted[k] = logs[k] + 65536.0;
+  }
+  std::vector<double> a(1500);
+  std::vector<double> b(1500);
+  auto const x = sy::weights_from_logs(logs, 0.0, a);
+  auto const y = sy::weights_from_logs(shifted, 65536.0, b);
+  CHECK(same_bits(a, b));
+  CHECK(same_bits(x.sum, y.sum));
+}
+
+TEST_CASE("blocks of 1024 summed pairwise give the sums of the whole") {
+  std::vector<double> const logs = some_logs(5 * 1024 + 77, 0.0);
+  std::vector<double> weights(logs.size());
+  auto const whole = sy::weights_from_logs(logs, 0.0, weights);
+  sy::pairwise_sum<sy::weight_sums> blocks;
+  for (std::size_t first = 0; first < logs.size(); first += 1024) {
+    std::size_t const size = std::min<std::size_t>(1024, logs.size() - first);
+    blocks.add(sy::weights_from_logs(std::span(logs).subspan(first, size), 0.0, std::span(weights).subspan(first, size)));
+  }
+  CHECK(same_bits(blocks.total().sum, whole.sum));
+  CHECK(same_bits(blocks.total().sum_squares, whole.sum_squares));
+  CHECK(same_bits(blocks.total().sum_logs, whole.sum_logs));
+}
+
+TEST_CASE("the largest of a block at every width, place and length") {
+  for (sy::isa const width : widths()) {
+    CHECK(sy::block_maximum({}, width) == lowest);
+    for (std::size_t const size : {1u, 7u, 8u, 9u, 16u, 33u, 1024u, 1027u}) {
+      std::vector<double> values = some_logs(size + 1, -3.0);
+      std::span<double> const block(values.data() + 1, size);  // not aligned
+      for (std::size_t k = 0; k < size; k += 1 + size / 40) {
+        double const kept = block[k];
+        block[k] = 5.5;
+        CHECK(sy::block_maximum(block, width) == 5.5);
+        block[k] = kept;
+      }
+      double want = lowest;
+      for (double const v : block) want = std::max(want, v);
+      CHECK(same_bits(sy::block_maximum(block, width), want));
+    }
+    std::vector<double> zeros = {-0.0, 0.0, -1.0, -0.0, 0.0, -0.0, -0.0, -0.0, -0.0};
+    CHECK(same_bits(sy::block_maximum(zeros, width), 0.0));
+    zeros[1] = zeros[4] = -0.0;
+    CHECK(same_bits(sy::block_maximum(zeros, width), 0.0));
+  }
+}
+
+TEST_CASE("the vector kernels are switched off by STEELYARD_PLAIN_KERNELS and on by the processor") {
+#if defined(STEELYARD_PLAIN_KERNELS) || !defined(__x86_64__)
+  CHECK(sy::widest_isa() == sy::isa::plain);
+#else
+  CHECK(sy::widest_isa() >= sy::isa::sse2);
+#endif
+}
