@@ -42,6 +42,7 @@ class estimate {
   ///   verdict of single samples: sound if carriers >= 30 and effective size >= 50, broken if carriers < 5
   ///   verdict of at most 64 groups: sound if there are 8, none carries over half, and effective size >= 50;
   ///   broken if one carries 90 %. More groups than that count like single samples.
+  ///   lineages: likewise whatever their number, with 20 effective lineages in place of the effective size.
   estimate(double its_value, error_terms const& terms, run_facts const& facts,
            error_scale scale = error_scale::linear)
       : value(its_value), effective_size(facts.effective_size()), scale_(scale) {
@@ -49,11 +50,13 @@ class estimate {
     bool const defined = terms.sum_squares > 0.0 && terms.sum_fourth > 0.0;
     carriers = defined ? terms.sum_squares * (terms.sum_squares / terms.sum_fourth) : 0.0;
     if (!defined) return;
-    if (facts.groups > 0.0 && facts.groups <= few_groups) {
+    bool const lineages = facts.how == steelyard::how_drawn::lineages;
+    if (facts.groups > 0.0 && (lineages || facts.groups <= few_groups)) {
       groups_ = facts.groups;
       degrees_of_freedom = facts.groups - 1.0;
       double const share = terms.largest_square / terms.sum_squares;
-      bool const good = facts.groups >= 8.0 && share <= 0.5 && effective_size >= 50.0;
+      bool const many = lineages ? facts.effective_groups() >= 20.0 && !facts.far_from_drawn : effective_size >= 50.0;
+      bool const good = facts.groups >= 8.0 && share <= 0.5 && many;
       verdict_ = share >= 0.9 ? steelyard::verdict::broken
                               : good ? steelyard::verdict::sound : steelyard::verdict::strained;
     } else {

@@ -2,8 +2,10 @@
 #pragma once
 
 #include <cstddef>
+#include <cstdint>
 #include <span>
 #include <tuple>
+#include <vector>
 
 #include <steelyard/base/elementary.hpp>
 #include <steelyard/estimate/estimator.hpp>
@@ -14,6 +16,8 @@ namespace steelyard::inline v1 {
 /// Logarithm of the evidence, the mean likelihood under the base weights:
 ///   log Z = base + log(sum e^(b+l) / sum e^b),   u_g = sum over g of B_i (e^l_i / Z - 1)
 ///   independent and unweighted: se^2 = sum (w/wbar - 1)^2 / (n (n-1))
+///   after tempering: log Z so far + log mean e^(b+l), u_e = D_e + sum over e of (e^(b+l) / mean - 1) / N,
+///   D_e what log Z so far owes to lineage e                     [Chan & Lai 2013; Lee & Whiteley 2018]
 /// Failed runs count as drawn. A likelihood without its constants may not be
 /// compared between models.
 class log_evidence_estimator {
@@ -44,7 +48,8 @@ class log_evidence_estimator {
           [](std::size_t) { return 1.0; }, false, [](std::size_t) { return std::uint32_t{0}; });
     double const value = facts.base + (facts.maximum - facts.base_maximum) +
                          (detail::portable_log(all.top()) - detail::portable_log(all.bottom()));
-    return estimate(value, all.terms(all.top(), facts.groups > 0.0), facts);
+    error_terms const terms = facts.influence ? with_base(all, *facts.influence) : all.terms(all.top(), facts.groups > 0.0);
+    return estimate(value, terms, facts);
   }
 
   template <class Self>
@@ -53,6 +58,22 @@ class log_evidence_estimator {
   }
 
  private:
+  /// Terms of the increment and of what was accounted for before, unit by unit.
+  static error_terms with_base(detail::ratio_sums const& all, base_influence const& before) {
+    std::vector<double> u = before.of_group;
+    all.each_group(all.top(), [&](std::uint32_t label, double increment) {
+      if (label < u.size()) u[label] += increment;
+    });
+    error_terms terms{before.rest_squares, before.rest_fourth, before.rest_largest};
+    for (double const each : u) {
+      double const square = each * each;
+      terms.sum_squares += square;
+      terms.sum_fourth += square * square;
+      if (square > terms.largest_square) terms.largest_square = square;
+    }
+    return terms;
+  }
+
   detail::ratio_sums sums_;
 };
 

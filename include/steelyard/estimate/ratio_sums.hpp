@@ -83,6 +83,14 @@ class ratio_sums {
     return *this;
   }
 
+  /// u_g = sum over g of (a - r b) / scale for each group, by its label.
+  template <class Take>
+  void each_group(double scale, Take take) const {
+    ratio_sums last = *this;
+    last.move_to(ratio());
+    for (std::size_t g = 0; g < last.groups_.size(); ++g) take(last.groups_.label(g), last.groups_[g][0] / scale);
+  }
+
   /// Terms of the ratio over its bottom: u = (a - r b) / scale.
   [[nodiscard]] error_terms terms(double scale, bool grouped) const {
     error_terms terms;

@@ -3,11 +3,22 @@
 
 #include <cstdint>
 #include <limits>
+#include <memory>
 #include <span>
+#include <vector>
 
 #include <steelyard/estimate/verdict.hpp>
 
 namespace steelyard::inline v1 {
+
+/// What the log-evidence accounted for before owes to each lineage: the error
+/// it carries, term by term, so that an increment adds to the same units.
+struct base_influence {
+  std::vector<double> of_group;  ///< by rank of the lineages that live
+  double rest_squares = 0.0;     ///< sum of squares over those that died out
+  double rest_fourth = 0.0;      ///< sum of fourth powers over them
+  double rest_largest = 0.0;     ///< their largest square
+};
 
 /// What an estimator may know of the run when it answers.
 struct run_facts {
@@ -25,10 +36,16 @@ struct run_facts {
   double largest_unit = 0.0;          ///< largest normalised weight of one sample or group
   bool bound_known = false;           ///< the weighter declared a bound
   double log_bound = 0.0;             ///< that bound
+  bool far_from_drawn = false;        ///< weights far from those that the states were moved under
+  std::shared_ptr<base_influence const> influence = {};  ///< of `base`, by lineage; null: none
 
   /// Kish's effective size; 0 where no weight is positive.
   [[nodiscard]] double effective_size() const noexcept {
     return sum_squares > 0.0 ? sum * (sum / sum_squares) : 0.0;
+  }
+  /// 1 / sum m_g^2: how many lineages of equal size carry as much.
+  [[nodiscard]] double effective_groups() const noexcept {
+    return group_share_squares > 0.0 ? 1.0 / group_share_squares : 0.0;
   }
   /// Factor c of se^2 = c sum u_g^2: n/(n-1), R/(R-1), or 1/(1 - sum m_g^2).
   [[nodiscard]] double correction() const noexcept {

@@ -24,6 +24,7 @@ struct sample_columns {
   std::vector<double> base;                  ///< b; empty: all zero
   double base_maximum = 0.0;                 ///< largest b
   double log_base = 0.0;                     ///< log-evidence accounted for before
+  bool base_known = false;                   ///< after tempering: e^b averages to e^-log_base by construction
   std::vector<std::string> names;            ///< of the likelihood columns
   std::vector<std::vector<double>> scores;   ///< a column each; empty where the one column is `log_weights` itself
   bool bound_known = false;
@@ -64,7 +65,7 @@ class kept_worker {
         call_user("a readout", origin_.sample_of(i), [&] { read_.read(state, row++, b.stride()); });
       });
     }
-    if (!columns_.base.empty() && to > from) {
+    if (!columns_.base.empty() && !columns_.base_known && to > from) {
       std::span<double> const out = b.base(to - from);
       weights_from_logs(std::span<double const>(columns_.base).subspan(from, to - from), columns_.base_maximum, out);
     }

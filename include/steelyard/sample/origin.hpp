@@ -3,6 +3,7 @@
 
 #include <cstddef>
 #include <cstdint>
+#include <memory>
 #include <optional>
 #include <span>
 #include <string>
@@ -47,6 +48,7 @@ struct sample_origin {
   std::vector<std::uint64_t> counts;   ///< empty: one each
   std::vector<std::uint32_t> groups;   ///< rank of each state's label, from 0; empty: every sample on its own
   std::vector<double> group_shares;    ///< share of the samples in each group
+  std::shared_ptr<base_influence const> influence;  ///< of the log-evidence found by a tempered run, by lineage
   std::vector<finding> findings;       ///< what the run itself had to say
 
   [[nodiscard]] std::uint64_t sample_of(std::size_t i) const noexcept { return samples.empty() ? i : samples[i]; }
@@ -99,6 +101,12 @@ struct sample_origin {
   }
 };
 
+/// Whether the weights carry so little of what a tempered run moved that their
+/// sums may have no variance: less than the half that the run itself allows a rung.
+inline bool far_from_drawn(weight_totals const& totals, sample_origin const& origin) noexcept {
+  return origin.how == how_drawn::lineages && totals.effective_size() < 0.5 * (totals.samples - totals.zeros);
+}
+
 /// Facts for the answers, from what a run's weights added up to.
 inline run_facts facts_of(weight_totals const& totals, sample_origin const& origin) {
   run_facts facts;
@@ -112,6 +120,8 @@ inline run_facts facts_of(weight_totals const& totals, sample_origin const& orig
   facts.groups = static_cast<double>(origin.group_shares.size());
   for (double const share : origin.group_shares) facts.group_share_squares += share * share;
   facts.largest_unit = totals.sum > 0.0 ? 1.0 / totals.sum : 0.0;
+  facts.far_from_drawn = far_from_drawn(totals, origin);
+  facts.influence = origin.influence;
   return facts;
 }
 

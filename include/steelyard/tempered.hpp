@@ -1,0 +1,7 @@
+// SPDX-License-Identifier: BSL-1.0
+#pragma once
+
+// Sharp readings and low probabilities: the same black box, far fewer runs.
+
+#include <steelyard/core.hpp>
+#include <steelyard/harder/run_tempered.hpp>
