@@ -16,6 +16,7 @@
 #include <steelyard/estimate/probability.hpp>
 #include <steelyard/estimate/quantile.hpp>
 #include <steelyard/estimate/ratio.hpp>
+#include <steelyard/estimate/until.hpp>
 #include <steelyard/run/pipeline.hpp>
 #include <steelyard/run/plan.hpp>
 #include <steelyard/run/threads.hpp>

@@ -64,6 +64,12 @@ class stopped_early : public error {
   using error::error;
 };
 
+/// A checkpoint of another version, plan or length, or a damaged one.
+class bad_checkpoint : public error {
+ public:
+  using error::error;
+};
+
 /// A user's function threw, or a sampler returned no state. The original is
 /// nested (`std::rethrow_if_nested`); its words are part of `what()`.
 class failed_sample : public error, public std::nested_exception {

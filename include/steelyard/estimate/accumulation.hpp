@@ -49,6 +49,14 @@ class own_error_slot {
       if (!v.weights.empty()) sums_.add(v.values, v.weights, v);
     }
   }
+  template <class Out>
+  void save(Out& out) const {
+    out.put_each(E::fields(sums_));
+  }
+  template <class In>
+  void load(In& in) {
+    in.get_each(E::fields(sums_));
+  }
   void rescale(double factor) { sums_.rescale(factor); }
   own_error_slot& operator+=(own_error_slot const& other) {
     sums_ += other.sums_;
@@ -103,6 +111,18 @@ struct node {
   void add(block const& b) {
     totals = b.totals();
     add_each<State>(b, std::index_sequence_for<Es...>{});
+  }
+
+  /// Into a checkpoint, and back.
+  template <class Out>
+  void save(Out& out) const {
+    out.put_each(weight_totals::fields(totals));
+    std::apply([&](auto const&... each) { (each.save(out), ...); }, slots);
+  }
+  template <class In>
+  void load(In& in) {
+    in.get_each(weight_totals::fields(totals));
+    std::apply([&](auto&... each) { (each.load(in), ...); }, slots);
   }
 
   /// Right block range after left: both are brought to the larger maximum first.
@@ -165,26 +185,50 @@ class block_tree {
     stack_.push_back({std::move(node), level});
   }
 
-  [[nodiscard]] bool empty() const noexcept { return stack_.empty(); }
-  /// Everything merged, from the right. @pre not empty
-  [[nodiscard]] std::unique_ptr<Node> finish() {
-    std::unique_ptr<Node> sum = std::move(stack_.back().node);
-    stack_.pop_back();
-    while (!stack_.empty()) {
-      *stack_.back().node += *sum;
-      sum = std::move(stack_.back().node);
-      stack_.pop_back();
+  /// Everything merged, from the right; the parts stay. @pre something was pushed
+  [[nodiscard]] std::unique_ptr<Node> total() const {
+    auto sum = std::make_unique<Node>(*stack_.back().node);
+    for (std::size_t k = stack_.size() - 1; k-- > 0;) {
+      auto left = std::make_unique<Node>(*stack_[k].node);
+      *left += *sum;
+      sum = std::move(left);
     }
     return sum;
   }
 
+  /// The one node that a whole stretch became. @pre 2^level blocks were pushed
+  [[nodiscard]] std::unique_ptr<Node> release() {
+    std::unique_ptr<Node> whole = std::move(stack_.back().node);
+    stack_.clear();
+    return whole;
+  }
+
+  /// Into a checkpoint, and back; `empty` is a node to load into.
+  template <class Out>
+  void save(Out& out) const {
+    out.put(static_cast<std::uint64_t>(stack_.size()));
+    for (entry const& each : stack_) {
+      out.put(each.level);
+      each.node->save(out);
+    }
+  }
+  template <class In>
+  void load(In& in, Node const& empty) {
+    stack_.clear();
+    std::uint64_t const size = in.template next<std::uint64_t>();
+    for (std::uint64_t k = 0; k < size; ++k) {
+      unsigned const level = in.template next<unsigned>();
+      auto node = std::make_unique<Node>(empty.fresh());
+      node->load(in);
+      stack_.push_back({std::move(node), level});
+    }
+  }
+
+ private:
   struct entry {
     std::unique_ptr<Node> node;
     unsigned level;
   };
-  [[nodiscard]] std::vector<entry> const& entries() const noexcept { return stack_; }
-
- private:
   std::vector<entry> stack_;
 };
 

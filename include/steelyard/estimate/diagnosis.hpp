@@ -23,6 +23,7 @@ enum class finding_kind {
   stopped,         ///< the run ended before its size
   hidden_state,    ///< replayed samples differ from the first run
   few_groups,      ///< too few independent groups for an error bar
+  target_missed,   ///< a target for the standard error was not met within the size
   reading_doubt,   ///< a reading looks off scale
 };
 

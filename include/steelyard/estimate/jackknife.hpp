@@ -98,6 +98,23 @@ class jackknife {
     return estimate(value, terms, facts);
   }
 
+  /// Into a checkpoint, and back.
+  template <class Out>
+  void save(Out& out) const {
+    out.put(static_cast<std::uint64_t>(slots_.size()));
+    for (std::optional<E> const& each : slots_) {
+      out.put(static_cast<std::uint8_t>(each.has_value() ? 1 : 0));
+      if (each) out.put_each(E::fields(*each));
+    }
+  }
+  template <class In>
+  void load(In& in) {
+    slots_.clear();
+    std::uint64_t const size = in.template next<std::uint64_t>();
+    for (std::uint64_t g = 0; g < size; ++g)
+      if (in.template next<std::uint8_t>() != 0) in.get_each(E::fields(group(static_cast<std::size_t>(g))));
+  }
+
   /// The accumulator of a group, made where there is none yet.
   [[nodiscard]] E& group(std::size_t g) {
     if (slots_.size() <= g) slots_.resize(g + 1);

@@ -122,18 +122,47 @@ class sweep {
           worker->fill(b, buffer);
           tree.push(node_of(buffer));
         }
-        done[t] = tree.finish();
+        done[t] = tree.release();
       });
     });
     failure.rethrow();
     for (std::size_t t = 0; t < tasks.size(); ++t) tree_.push(std::move(done[t]), tasks[t].level);
   }
 
-  /// Ends the run: everything merged. @pre at least one block was taken in
+  /// Everything merged so far, at the end of the run. @pre at least one block was taken in
   [[nodiscard]] std::unique_ptr<node_type> finish() {
     if constexpr ((prepares<Es> || ...))
       if (!prepared_) settle_pilot();
-    return tree_.finish();
+    return tree_.total();
+  }
+  /// Everything merged so far, and the run goes on. @pre ready()
+  [[nodiscard]] std::unique_ptr<node_type> so_far() const { return tree_.total(); }
+  /// False while blocks are held back for an estimator that must see the first entries.
+  [[nodiscard]] bool ready() const noexcept { return prepared_; }
+
+  /// Into a checkpoint, and back. @pre ready()
+  template <class Out>
+  void save(Out& out) const {
+    out.put(static_cast<std::uint64_t>(shown_.size()));
+    for (auto const& [values, weights] : shown_) {
+      out.put(values);
+      out.put(weights);
+    }
+    tree_.save(out);
+  }
+  template <class In>
+  void load(In& in) {
+    shown_.resize(static_cast<std::size_t>(in.template next<std::uint64_t>()));
+    for (auto& [values, weights] : shown_) {
+      in.get(values);
+      in.get(weights);
+    }
+    if (!prepared_) {
+      std::size_t at = 0;
+      std::apply([&](auto&... slot) { (prepare_again(slot, at), ...); }, empty_.slots);
+      prepared_ = true;
+    }
+    tree_.load(in, empty_);
   }
 
  private:
@@ -199,6 +228,14 @@ class sweep {
       std::vector<double> values;
       for (auto const& column : of_column) values.insert(values.end(), column.begin(), column.end());
       std::get<I>(empty_.slots).prepared().prepare(std::span<double const>(values), std::span<double const>(weights));
+      shown_.emplace_back(std::move(values), std::move(weights));
+    }
+  }
+  template <class Slot>
+  void prepare_again(Slot& slot, std::size_t& at) {
+    if constexpr (prepares<std::remove_cvref_t<decltype(slot.prepared())>>) {
+      slot.prepared().prepare(std::span<double const>(shown_.at(at).first), std::span<double const>(shown_.at(at).second));
+      ++at;
     }
   }
 
@@ -207,6 +244,7 @@ class sweep {
   bool prepared_;
   std::vector<std::unique_ptr<block>> held_;
   std::size_t held_kept_ = 0;
+  std::vector<std::pair<std::vector<double>, std::vector<double>>> shown_;  // what `prepare` was shown, for checkpoints
 };
 
 }  // namespace steelyard::inline v1::detail

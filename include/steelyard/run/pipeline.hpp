@@ -12,12 +12,11 @@
 
 #include <steelyard/base/algorithm.hpp>
 #include <steelyard/run/front_door.hpp>
+#include <steelyard/run/keeping_run.hpp>
+#include <steelyard/run/one_pass.hpp>
 #include <steelyard/run/plan.hpp>
 #include <steelyard/run/replay_store.hpp>
-#include <steelyard/run/rounds.hpp>
-#include <steelyard/run/run_worker.hpp>
 #include <steelyard/run/slots.hpp>
-#include <steelyard/run/threads.hpp>
 #include <steelyard/sample/resample.hpp>
 #include <steelyard/sample/weigh.hpp>
 
@@ -44,9 +43,9 @@ class pipeline {
   weighted_sample<state_type> run(plan const& how) const {
     if constexpr (fits) {
       auto origin = std::make_shared<detail::sample_origin>();
-      start(*origin, how);
+      detail::start_run(*origin, how);
       detail::kept_part<state_type> part;
-      draw(how, 0, *origin, part);
+      detail::keeping_run(sampler_, weighter_, how, 0, *origin, part);
       return assemble(std::move(origin), std::move(part), how.keep);
     } else {
       throw error("pipeline: not usable");
@@ -68,10 +67,10 @@ class pipeline {
       how.on_failure = origin->on_failure;
       how.executor = origin->execute;
       how.keep = sample.store()->data() != nullptr ? keeping::states : keeping::streams;
-      refuse_size(how);
+      detail::refuse_size(how);
       detail::kept_part<state_type> part = taken_apart(std::move(sample), how);
       std::uint64_t const from = origin->drawn;
-      draw(how, from, *origin, part);
+      detail::keeping_run(sampler_, weighter_, how, from, *origin, part);
       return assemble(std::move(origin), std::move(part), how.keep);
     } else {
       throw error("pipeline: not usable");
@@ -115,7 +114,7 @@ class pipeline {
       auto const answers = pass(how, std::tuple(detail::slots_estimator(static_cast<std::size_t>(k.value()), how.seed)));
       detail::slots_result const& slots = answers.template get<0>();
       std::vector<std::size_t> const samples(slots.samples.begin(), slots.samples.end());
-      auto replays = std::make_shared<detail::replay_store<Sampler> const>(sampler_, terms(how),
+      auto replays = std::make_shared<detail::replay_store<Sampler> const>(sampler_, detail::terms_of(how),
                                                                           std::make_shared<detail::sample_origin>());
       auto [states, places] = detail::gathered<state_type>(replays, samples);
       return ensemble<state_type>(std::move(states), std::move(places), samples, slots.weights,
@@ -128,7 +127,7 @@ class pipeline {
   /// The state of sample i, or the exception its sampler throws.
   state_type replay(plan const& how, count i) const {
     if constexpr (fits) {
-      detail::run_terms const from = terms(how);
+      detail::run_terms const from = detail::terms_of(how);
       draws source(how.seed);
       detail::seat_on_sample(source, from, i);
       decltype(auto) call = detail::instance_of<Sampler>::make(sampler_);
@@ -147,87 +146,6 @@ class pipeline {
 
  private:
   using maker_t = detail::maker<Sampler, Weighter>;
-
-  static detail::run_terms terms(plan const& how) { return {how.seed, how.source, how.on_failure}; }
-
-  static void refuse_size(plan const& how) {
-    if (how.size == 0u) throw bad_argument("plan: size is 0; at least one sample is needed");
-    if (!how.source.allows(how.size))
-      throw bad_argument("plan: size " + std::to_string(how.size.value()) + " does not suit the source of words, which allows " +
-                         how.source.sizes());
-  }
-  static void start(detail::sample_origin& origin, plan const& how) {
-    refuse_size(how);
-    origin.seed = how.seed;
-    origin.source = how.source;
-    origin.on_failure = how.on_failure;
-    origin.execute = how.executor ? how.executor : on_threads(how.threads);
-    if (how.source.replicates() > 0) {
-      origin.how = how_drawn::replicated;
-      origin.group_shares.assign(static_cast<std::size_t>(how.source.replicates()),
-                                 1.0 / static_cast<double>(how.source.replicates()));
-    }
-  }
-
-  /// Replays the probed samples; where states are made again later, a difference is an error.
-  template <class Maker>
-  static void check_replay(Maker& making, detail::run_shared const& shared, detail::sample_origin& origin, bool must_agree) {
-    std::uint64_t differs = 0;
-    auto const [calls, agree] = detail::replay_agrees(making, shared, differs);
-    origin.calls += calls;
-    if (agree) return;
-    if (must_agree) throw hidden_state("run: " + detail::hidden_state_text(differs));
-    origin.findings.push_back({finding_kind::hidden_state, detail::hidden_state_text(differs)});
-  }
-
-  /// Draws samples from `from` on and appends them to `part`.
-  void draw(plan const& how, std::uint64_t from, detail::sample_origin& origin, detail::kept_part<state_type>& part) const {
-    using worker = detail::keeping_worker<Sampler, Weighter>;
-    detail::run_shared shared;
-    shared.terms = terms(how);
-    shared.size = how.size;
-    shared.probed = detail::probed_samples(how.size);
-    shared.failed = 0;
-    detail::worker_pool<worker> pool([&] { return std::make_unique<worker>(sampler_, weighter_, shared); });
-    bool const keep_states = how.keep == keeping::states;
-    std::size_t const room = static_cast<std::size_t>(how.size.value());
-    if (how.time_limit.count() == 0 && !how.token.stop_possible()) {
-      if (keep_states) part.states.reserve(room);
-      part.log_weights.reserve(room);
-    }
-    std::uint64_t const done = from / detail::block_size;
-    detail::rounds all(how, done, how.size);
-    all.each(
-        [&](std::uint64_t first, std::uint64_t last) {
-          std::vector<detail::stretch> const tasks = detail::stretches(first, last, detail::longest_stretch);
-          std::vector<detail::kept_part<state_type>> parts(tasks.size());
-          detail::first_failure failure;
-          origin.execute(tasks.size(), [&](std::size_t t) {
-            failure.guard(tasks[t].first * detail::block_size, [&] {
-              auto const own = pool.take();
-              for (std::uint64_t b = tasks[t].first; b < tasks[t].first + (std::uint64_t{1} << tasks[t].level); ++b) {
-                if (failure.before(b * detail::block_size)) return;
-                own->fill(b, keep_states, from, parts[t]);
-              }
-            });
-          });
-          failure.rethrow();
-          for (auto& each : parts) part.append(std::move(each));
-        },
-        [&] { return shared.failed; });
-    std::uint64_t const redone = from % detail::block_size;
-    origin.calls += all.drawn() - (from - redone);
-    origin.failed = all.drawn() - part.samples.size();
-    origin.drawn = all.drawn();
-    origin.findings.insert(origin.findings.end(), all.findings().begin(), all.findings().end());
-    if (from == 0) {
-      auto const own = pool.take();
-      check_replay(own->making(), shared, origin, !keep_states);
-    }
-    if (part.samples.empty())
-      throw no_likelihood("run: every one of the " + std::to_string(origin.drawn) +
-                          " runs of the sampler failed and was set aside; there is nothing to weigh");
-  }
 
   weighted_sample<state_type> assemble(std::shared_ptr<detail::sample_origin> origin, detail::kept_part<state_type> part,
                                        keeping keep) const {
@@ -294,49 +212,7 @@ class pipeline {
 
   template <class... Es>
   auto pass(plan const& how, std::tuple<Es...> const& bound) const {
-    using worker = detail::run_worker<Sampler, Weighter, Es...>;
-    detail::sample_origin origin;
-    start(origin, how);
-    detail::run_shared shared;
-    shared.terms = terms(how);
-    shared.size = how.size;
-    shared.probed = detail::probed_samples(how.size);
-    detail::worker_pool<worker> pool([&] { return std::make_unique<worker>(sampler_, weighter_, shared, bound); });
-    detail::sweep<state_type, Es...> sweep(bound);
-    detail::rounds all(how, 0, how.size);
-    all.each([&](std::uint64_t first, std::uint64_t last) { sweep.take(first, last, origin.execute, pool); },
-             [&] { return shared.failed; });
-    origin.drawn = origin.calls = all.drawn();
-    origin.failed = shared.failed;
-    origin.findings = all.findings();
-    {
-      auto const own = pool.take();
-      check_replay(own->making(), shared, origin, false);
-    }
-    auto const merged = sweep.finish();
-    detail::weight_totals const& totals = merged->totals;
-    if (!(totals.maximum > detail::impossible)) {
-      detail::sample_columns seen;
-      for (std::size_t k = 0; k < maker_t::items; ++k) {
-        seen.names.push_back(detail::item_name(weighter_, k));
-        seen.scores.push_back({shared.largest.empty() ? detail::impossible : shared.largest[k]});
-      }
-      throw no_likelihood(detail::no_likelihood_text("estimate", seen, origin));
-    }
-    run_facts facts = detail::facts_of(totals, origin);
-    if constexpr (detail::bounded_weighter<Weighter>) {
-      facts.bound_known = true;
-      facts.log_bound = weighter_.log_bound();
-    }
-    if (facts.groups > 0.0) facts.largest_unit = std::max(facts.largest_unit, 1.0 / facts.groups);
-    detail::group_facts const grouping = origin.grouping();
-    return std::apply(
-        [&](auto const&... slot) {
-          auto each = std::make_tuple(slot.answer(facts, grouping)...);
-          return answers<std::remove_cvref_t<decltype(slot.answer(facts, grouping))>...>(
-              std::move(each), detail::diagnosis_of(totals, origin, origin.findings), origin.drawn, origin.calls);
-        },
-        merged->slots);
+    return detail::one_pass(sampler_, weighter_, how, bound);
   }
 
   Sampler sampler_;

@@ -31,22 +31,36 @@ class rounds {
     step_ = watched ? 1 : longest;
   }
 
-  /// Takes blocks in rounds: `take(first, last)` draws them, `failed()` counts runs set aside so far.
-  template <class Take, class Failed>
-  void each(Take take, Failed failed) {
+  /// Takes blocks in rounds. `take(first, last)` draws them, `failed()` counts runs set aside so far, `save(last,
+  /// over)` may leave a checkpoint; `satisfied()` is asked after 1, 2, 4, ... blocks where there are targets.
+  template <class Take, class Failed, class Save, class Satisfied>
+  void each(Take take, Failed failed, Save save, bool targets, Satisfied satisfied) {
+    std::uint64_t goal = 1;
+    while (targets && goal <= next_) goal *= 2;
     while (next_ < last_) {
       auto const before = clock::now();
-      std::uint64_t const end = next_ + std::min(step_, last_ - next_);
+      std::uint64_t end = next_ + std::min(step_, last_ - next_);
+      if (targets) end = std::min(end, goal);
       take(next_, end);
       next_ = end;
       auto const now = clock::now();
       adapt(now - before);
       if (plan_.progress)
         plan_.progress({drawn(), size_, failed(), std::chrono::duration_cast<std::chrono::nanoseconds>(now - start_)});
-      if (next_ == last_) return;
-      if (plan_.token.stop_requested()) return stop("a stop was asked for");
-      if (plan_.time_limit.count() > 0 && now - start_ >= plan_.time_limit) return stop("the time limit was reached");
+      bool const reached = targets && next_ == goal && satisfied();
+      if (targets && next_ == goal) goal *= 2;
+      bool const stopped = next_ < last_ && plan_.token.stop_requested();
+      bool const late = plan_.time_limit.count() > 0 && now - start_ >= plan_.time_limit;
+      bool const over = reached || stopped || late || next_ == last_;
+      save(next_, over);
+      if (reached) return;
+      if (next_ == last_) break;
+      if (stopped) return stop("a stop was asked for");
+      if (late) return stop("the time limit was reached");
     }
+    if (targets && !satisfied())
+      findings_.push_back({finding_kind::target_missed, "The target for the standard error was not met within " +
+                                                            std::to_string(size_) + " samples: give the plan a larger size."});
   }
 
   [[nodiscard]] std::uint64_t drawn() const noexcept { return std::min(size_, next_ * block_size); }

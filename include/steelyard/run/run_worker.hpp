@@ -14,6 +14,7 @@
 #include <steelyard/estimate/reader.hpp>
 #include <steelyard/estimate/sweep.hpp>
 #include <steelyard/run/maker.hpp>
+#include <steelyard/sample/state_store.hpp>
 
 namespace steelyard::inline v1::detail {
 
