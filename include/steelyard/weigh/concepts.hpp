@@ -39,8 +39,13 @@ inline constexpr bool is_number_v = std::is_arithmetic_v<T>;
 /// `write(answer, double* first, std::size_t stride)`.
 template <class Answer>
 struct readout_columns {
-  static constexpr std::size_t size = detail::is_number_v<Answer> ? 1 : 0;
-  static void write(Answer const& answer, double* first, std::size_t) noexcept { *first = static_cast<double>(answer); }
+  static constexpr std::size_t size = 0;
+};
+template <class T>
+  requires(detail::is_number_v<T>)
+struct readout_columns<T> {
+  static constexpr std::size_t size = 1;
+  static void write(T answer, double* first, std::size_t) noexcept { *first = static_cast<double>(answer); }
 };
 template <class T, std::size_t N>
   requires(detail::is_number_v<T>)
