@@ -33,9 +33,11 @@ class block {
     samples_.reserve(capacity);
   }
 
-  /// @param first  number of the block's first sample
-  void clear(std::uint64_t first) {
+  /// @param first       number of the block's first sample
+  /// @param first_copy  the same with every state as often as it counts
+  void clear(std::uint64_t first, std::uint64_t first_copy = 0) {
     first_ = first;
+    first_copy_ = first_copy;
     log_weights_.clear();
     positions_.clear();
     samples_.clear();
@@ -75,6 +77,7 @@ class block {
     for (std::size_t j = 0; j < kept_; ++j) kept_weights_[j] = weights_[positions_[j]];
     pick(counts_, kept_counts_);
     pick(groups_, kept_groups_);
+    number_copies();
     for (std::size_t c = 1; c < columns_ && kept_ < capacity_; ++c)
       for (std::size_t j = 0; j < kept_; ++j) values_[c * kept_ + j] = values_[c * capacity_ + j];
   }
@@ -83,6 +86,8 @@ class block {
   [[nodiscard]] std::size_t kept() const noexcept { return kept_; }
   [[nodiscard]] std::span<std::uint64_t const> samples() const noexcept { return samples_; }
   [[nodiscard]] std::uint64_t first() const noexcept { return first_; }
+  /// Number of the first copy of kept state j, were every state drawn as often as it counts. @pre there are counts
+  [[nodiscard]] std::uint64_t first_copy(std::size_t j) const noexcept { return kept_copies_[j]; }
 
   /// `columns` columns from `column` on, with the weights of the states of positive weight.
   [[nodiscard]] weighted_view view(std::size_t column, std::size_t columns) const noexcept {
@@ -122,14 +127,25 @@ class block {
       for (std::size_t j = 0; j < kept_; ++j) to.push_back(from[positions_[j]]);
   }
 
+  void number_copies() {
+    kept_copies_.clear();
+    std::uint64_t next = first_copy_;
+    for (std::size_t i = 0, j = 0; i < counts_.size() && j < kept_; next += counts_[i++])
+      if (positions_[j] == i) {
+        kept_copies_.push_back(next);
+        ++j;
+      }
+  }
+
   std::size_t capacity_;
   std::size_t columns_;
   std::uint64_t first_ = 0;
+  std::uint64_t first_copy_ = 0;
   std::size_t kept_ = 0;
   how_drawn how_ = how_drawn::independent;
   std::vector<double> log_weights_, values_, weights_, kept_weights_, base_;
   std::vector<std::uint32_t> positions_;
-  std::vector<std::uint64_t> samples_, counts_, kept_counts_;
+  std::vector<std::uint64_t> samples_, counts_, kept_counts_, kept_copies_;
   std::vector<std::uint32_t> groups_, kept_groups_;
   weight_totals totals_;
 };

@@ -124,9 +124,11 @@ class jackknife {
   [[nodiscard]] bool holds(std::size_t g) const noexcept { return g < slots_.size() && slots_[g].has_value(); }
 
  private:
+  [[nodiscard]] static std::size_t group_of_sample(std::uint64_t sample) noexcept {
+    return static_cast<std::size_t>(sample / jackknife_run % jackknife_groups);
+  }
   [[nodiscard]] static std::size_t group_of(block const& b, weighted_view const& v, std::size_t i) {
-    return v.groups.empty() ? static_cast<std::size_t>(b.samples()[i] / jackknife_run % jackknife_groups)
-                            : v.groups[i] % jackknife_groups;
+    return v.groups.empty() ? group_of_sample(b.samples()[i]) : v.groups[i] % jackknife_groups;
   }
   void add_run(std::size_t g, weighted_view const& v, std::size_t from, std::size_t to, std::size_t columns) {
     std::size_t const n = v.weights.size();
@@ -140,17 +142,18 @@ class jackknife {
       for (std::size_t i = from; i < to; ++i) scratch_.push_back(v.values[c * n + i]);
     sums.add(scratch_, v.weights.subspan(from, to - from));
   }
-  /// An entry that stands for several samples is added that often.
+  /// An entry that stands for several samples is added that often, each copy to the group it would have on its own.
   void add_copies(block const& b, weighted_view const& v, std::size_t i, std::size_t columns) {
     std::size_t const n = v.weights.size();
-    std::uint64_t left = v.counts[i];
-    E& sums = group(group_of(b, v, i));
+    std::uint64_t at = b.first_copy(i), left = v.counts[i];
     while (left > 0) {
-      std::size_t const now = static_cast<std::size_t>(std::min<std::uint64_t>(left, block_size));
+      std::uint64_t const run = v.groups.empty() ? jackknife_run - at % jackknife_run : block_size;
+      std::size_t const now = static_cast<std::size_t>(std::min(left, run));
       scratch_.clear();
       for (std::size_t c = 0; c < columns; ++c) scratch_.insert(scratch_.end(), now, v.values[c * n + i]);
       copies_.assign(now, v.weights[i]);
-      sums.add(scratch_, copies_);
+      group(v.groups.empty() ? group_of_sample(at) : group_of(b, v, i)).add(scratch_, copies_);
+      at += now;
       left -= now;
     }
   }

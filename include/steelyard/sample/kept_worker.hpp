@@ -44,7 +44,7 @@ class kept_worker {
       : states_(states), columns_(columns), origin_(origin), read_(estimators) {}
 
   void fill(std::uint64_t index, block& b) {
-    b.clear(index * block_size);
+    b.clear(index * block_size, origin_.counts.empty() ? 0 : origin_.copies_before[static_cast<std::size_t>(index)]);
     auto const [from, to] = origin_.range_of(index, columns_.log_weights.size());
     X const* const kept = states_.data();
     positions_.clear();

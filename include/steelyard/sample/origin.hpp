@@ -46,6 +46,7 @@ struct sample_origin {
   std::uint64_t calls = 0;   ///< of the sampler, spot checks included
   std::vector<std::uint64_t> samples;  ///< stream of each state; empty: position and stream are the same
   std::vector<std::uint64_t> counts;   ///< empty: one each
+  std::vector<std::uint64_t> copies_before;  ///< sum of the counts before each block; empty where counts are
   std::vector<std::uint32_t> groups;   ///< rank of each state's label, from 0; empty: every sample on its own
   std::vector<double> group_shares;    ///< share of the samples in each group
   std::shared_ptr<base_influence const> influence;  ///< of the log-evidence found by a tempered run, by lineage
@@ -67,6 +68,16 @@ struct sample_origin {
   [[nodiscard]] std::uint64_t blocks(std::size_t size) const noexcept {
     std::uint64_t const end = samples.empty() ? size : samples.back() + 1;
     return (end + block_size - 1) / block_size;
+  }
+
+  /// Takes in how many samples each state stands for.
+  void take_counts(std::vector<std::uint64_t> its_counts) {
+    counts = std::move(its_counts);
+    drawn = 0;
+    for (std::size_t i = 0; i < counts.size(); ++i) {
+      if (i % block_size == 0) copies_before.push_back(drawn);
+      drawn += counts[i];
+    }
   }
 
   /// Replaces labels by their ranks and counts each group's share of the samples.

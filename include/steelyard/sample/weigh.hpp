@@ -63,6 +63,15 @@ inline std::vector<double> base_of(weigh_options const& options) {
   return base;
 }
 
+/// A state that counts for no sample was never drawn: its base weight is zero.
+inline void rule_out_uncounted(std::vector<double>& base, std::vector<std::uint64_t> const& counts) {
+  for (std::size_t i = 0; i < counts.size(); ++i) {
+    if (counts[i] > 0) continue;
+    if (base.empty()) base.assign(counts.size(), 0.0);
+    base[i] = impossible;
+  }
+}
+
 template <class X, class Holder, class Weighter>
 weighted_sample<X> weigh_states(Holder states, std::size_t size, Weighter const& weighter, weigh_options options) {
   if (size == 0) throw bad_argument("weigh: the ensemble is empty; at least one state is needed");
@@ -70,8 +79,11 @@ weighted_sample<X> weigh_states(Holder states, std::size_t size, Weighter const&
   refuse_length("logarithms of prior weights", options.log_prior_weights.size(), size);
   refuse_length("counts", options.counts.size(), size);
   refuse_length("groups", options.groups.size(), size);
+  if (!options.counts.empty() && std::all_of(options.counts.begin(), options.counts.end(), [](auto m) { return m == 0; }))
+    throw no_likelihood("weigh: every count is zero");
   sample_columns prior;
   prior.base = base_of(options);
+  rule_out_uncounted(prior.base, options.counts);
   prior.log_weights.assign(size, 0.0);
   if (!prior.base.empty()) {
     prior.base_maximum = *std::max_element(prior.base.begin(), prior.base.end());
@@ -79,15 +91,10 @@ weighted_sample<X> weigh_states(Holder states, std::size_t size, Weighter const&
   }
   auto origin = std::make_shared<sample_origin>();
   origin->execute = std::move(options.executor);
-  origin->counts = std::move(options.counts);
+  origin->drawn = size;
+  if (!options.counts.empty()) origin->take_counts(std::move(options.counts));
   origin->take_labels(options.groups);
   origin->how = options.groups.empty() ? how_drawn::independent : how_drawn::labelled;
-  origin->drawn = size;
-  if (!origin->counts.empty()) {
-    origin->drawn = 0;
-    for (std::uint64_t const m : origin->counts) origin->drawn += m;
-    if (origin->drawn == 0) throw no_likelihood("weigh: every count is zero");
-  }
   auto store = std::make_shared<kept_states<X, Holder> const>(std::move(states));
   sample_columns scored = score_states<X>(*store, prior, *origin, weighter);
   return weighted_sample<X>(std::move(store), std::move(scored), std::move(origin), "weigh");
