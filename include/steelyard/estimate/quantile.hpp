@@ -51,13 +51,17 @@ class column_estimator {
   }
 
  protected:
+  /// What was taken in; it lasts as long as this.
+  [[nodiscard]] weighted_view view() const noexcept {
+    weighted_view all;
+    all.values = values_;
+    all.weights = weights_;
+    all.counts = counts_;
+    all.groups = groups_;
+    return all;
+  }
   [[nodiscard]] std::shared_ptr<weighted_column const> column(run_facts const& facts) const {
-    weighted_view view;
-    view.values = values_;
-    view.weights = weights_;
-    view.counts = counts_;
-    view.groups = groups_;
-    return std::make_shared<weighted_column const>(view, facts);
+    return std::make_shared<weighted_column const>(view(), facts);
   }
 
  private:

@@ -13,9 +13,10 @@
 #include <vector>
 
 #include <steelyard/base/algorithm.hpp>
+#include <steelyard/estimate/bins.hpp>
 #include <steelyard/estimate/estimate.hpp>
-#include <steelyard/estimate/mean_sums.hpp>
-#include <steelyard/estimate/share_sums.hpp>
+#include <steelyard/estimate/expectation.hpp>
+#include <steelyard/estimate/quantile.hpp>
 #include <steelyard/sample/scheme.hpp>
 #include <steelyard/sample/state_store.hpp>
 #include <steelyard/weigh/concepts.hpp>
@@ -54,10 +55,50 @@ inline estimate resampled_estimate(double value, estimate const& parent, double 
   return estimate(value, terms, facts, event ? error_scale::logit : error_scale::linear);
 }
 
+/// Takes in a whole kept sample and answers how much the mean over k slots varies from draw to draw.
+template <class Readout>
+class resampling_error_estimator : public column_estimator<Readout> {
+ public:
+  resampling_error_estimator(Readout const& its_readout, scheme how, std::size_t k)
+      : column_estimator<Readout>(its_readout), scheme_(how), k_(k) {}
+  [[nodiscard]] resampling_error_estimator fresh() const { return {this->readout(), scheme_, k_}; }
+  [[nodiscard]] double answer(run_facts const&) const {
+    weighted_view const all = this->view();
+    std::vector<double> weights(all.weights.begin(), all.weights.end());
+    for (std::size_t i = 0; i < weights.size(); ++i) weights[i] *= all.count(i);
+    return resampling_variance(scheme_, weights, all.values, k_);
+  }
+
+ private:
+  scheme scheme_;
+  std::size_t k_;
+};
+
+/// Some states of another store, in order; those of a store in memory are looked at where they lie.
+template <class X>
+class chosen_states final : public state_store<X> {
+ public:
+  chosen_states(std::shared_ptr<state_store<X> const> from, std::vector<std::size_t> places)
+      : from_(std::move(from)), places_(std::move(places)) {}
+  [[nodiscard]] X const* data() const noexcept override { return nullptr; }
+  void visit(std::span<std::size_t const> positions, typename state_store<X>::look const& act) const override {
+    for (std::size_t const i : positions) act(i, from_->data()[places_[i]]);
+  }
+  void remake(std::span<std::size_t const> positions, std::function<void(X&&)> const& take) const override {
+    std::vector<std::size_t> places;
+    for (std::size_t const i : positions) places.push_back(places_[i]);
+    from_->remake(places, take);
+  }
+
+ private:
+  std::shared_ptr<state_store<X> const> from_;
+  std::vector<std::size_t> places_;
+};
+
 }  // namespace detail
 
-/// Equally weighted states that stand for a weighted sample: slots that refer to
-/// shared states. A random-access range of `X const&`.
+/// States that stand for a weighted sample: slots that refer to shared states,
+/// equal after a draw with replacement, weighted after one without. A random-access range of `X const&`.
 template <class X>
 class ensemble {
  public:
@@ -114,6 +155,9 @@ class ensemble {
 
   /// For each slot: which state of the parent it is; after a one-pass resample, which stream.
   [[nodiscard]] std::span<std::size_t const> indices() const noexcept { return indices_; }
+  /// For each slot, after a draw without replacement: an unbiased estimate of its state's normalised weight, 0 for
+  /// states not drawn. They add up to about one. Empty after a draw with replacement, where slots are equal.
+  [[nodiscard]] std::span<double const> weights() const noexcept { return slot_weights_; }
   /// Each state that was drawn, in order, with how often.
   [[nodiscard]] std::vector<std::pair<std::size_t, std::size_t>> copies() const {
     std::vector<std::size_t> sorted(indices_.begin(), indices_.end());
@@ -128,23 +172,57 @@ class ensemble {
 
   /// Mean over the slots, with the parent's error plus that of the resampling.
   template <class Readout>
-  estimate expectation(Readout const& readout) const {
-    static_assert(readout_for<Readout, X>, "steelyard: expectation() takes a readout that returns one number");
-    return mean_of(readout, false);
+  auto expectation(Readout const& readout) const {
+    static_assert(readout_for<Readout, X>, "steelyard: expectation() takes a readout that returns a number, or a "
+                                           "std::array of numbers");
+    if constexpr (readout_columns<detail::result_t<Readout, X const&>>::size > 1)
+      return as_sample().expectation(readout);
+    else if constexpr (readout_for<Readout, X>)
+      return slot_weights_.empty() ? mean_of(readout, false) : as_sample().expectation(readout);
   }
   /// Share of the slots where an event holds, with the parent's error plus that of the resampling.
   template <class Event>
-  estimate probability(Event const& event) const {
+  steelyard::estimate probability(Event const& event) const {
     static_assert(event_for<Event, X>, "steelyard: probability() takes an event: a readout that returns bool");
-    return mean_of(event, true);
+    if constexpr (event_for<Event, X>)
+      return slot_weights_.empty() ? mean_of(event, true) : as_sample().probability(event);
+    else
+      return {};
+  }
+
+  /// The states drawn, each once, as a weighted sample to ask anything of: base weights are the numbers of copies, or
+  /// the weights of a draw without replacement, and groups are the parent's.
+  ///   Its error bars hold the parent's error and that of the resampling, without a look at the parent: a state of
+  ///   weight W is drawn m times with E m^2 = (k W)^2 + var m, so that sum (m/k)^2 (f-mu)^2 has both. What systematic
+  ///   and stratified draws save on states in an order of their own is left out, so they may be too wide, not too
+  ///   narrow; `expectation` and `probability` know it.
+  /// `before()`, `reweigh` and `log_evidence` take the ensemble for what was known before.
+  weighted_sample<X> as_sample() const;
+
+  /// Answers to several questions at once, as `as_sample()` gives them.
+  template <class... Es>
+  auto estimate(Es const&... questions) const {
+    return as_sample().estimate(questions...);
+  }
+  template <class Readout, class Edges = automatic_bins_t>
+  auto histogram(Readout readout, Edges edges = {}) const {
+    return as_sample().histogram(std::move(readout), std::move(edges));
+  }
+  template <class Readout>
+  auto quantile(Readout readout, double p) const {
+    return as_sample().quantile(std::move(readout), p);
+  }
+  template <class Readout>
+  auto interval(Readout readout, double level) const {
+    return as_sample().interval(std::move(readout), level);
   }
 
   /// @cond for the other parts of the library
   /// Slots of a kept or replayed parent; `places` say where in `states` each slot lies.
   ensemble(std::shared_ptr<detail::state_store<X> const> states, std::vector<std::size_t> places,
-           std::vector<std::size_t> indices, std::shared_ptr<weighted_sample<X> const> parent, steelyard::scheme how)
-      : states_(std::move(states)), places_(std::move(places)), indices_(std::move(indices)), parent_(std::move(parent)),
-        scheme_(how) {}
+           detail::drawn_slots slots, std::shared_ptr<weighted_sample<X> const> parent, steelyard::scheme how)
+      : states_(std::move(states)), places_(std::move(places)), indices_(std::move(slots.positions)),
+        slot_weights_(std::move(slots.weights)), parent_(std::move(parent)), scheme_(how) {}
   /// Slots of a one-pass run with the normalised weight of each slot's state.
   ensemble(std::shared_ptr<detail::state_store<X> const> states, std::vector<std::size_t> places,
            std::vector<std::size_t> indices, std::vector<double> weights, double effective_size)
@@ -154,7 +232,7 @@ class ensemble {
 
  private:
   template <class Readout>
-  estimate mean_of(Readout const& readout, bool event) const {
+  steelyard::estimate mean_of(Readout const& readout, bool event) const {
     double const k = static_cast<double>(size());
     std::vector<double> values(size());
     double mean = 0.0;
@@ -173,15 +251,14 @@ class ensemble {
       }
     }
     double const carriers = fourth > 0.0 ? squares * (squares / fourth) : 0.0;
-    double variance = k > 1.0 ? squares / (k * (k - 1.0)) : 0.0;
+    double const variance = k > 1.0 ? squares / (k * (k - 1.0)) : 0.0;
     if (parent_) {
-      estimate const whole = parent_->expectation(readout);
-      if (scheme_ == steelyard::scheme::systematic)
-        variance = detail::systematic_variance(detail::plain_weights(*parent_), parent_->values(readout), size());
-      return detail::resampled_estimate(mean, whole, variance, carriers, k, event);
+      auto const asked = parent_->estimate(steelyard::expectation(readout),
+                                           detail::resampling_error_estimator<Readout>(readout, scheme_, size()));
+      return detail::resampled_estimate(mean, asked.template get<0>(), asked.template get<1>(), carriers, k, event);
     }
     // Without the parent: sum W^2 d over it is the mean of W d over draws in proportion to W.
-    estimate whole;
+    steelyard::estimate whole;
     whole.standard_error = std::sqrt(weighted / k);
     whole.carriers = weighted_fourth > 0.0 ? (weighted / k) * (weighted / k) / (weighted_fourth / k) : 0.0;
     whole.effective_size = effective_size_;
@@ -191,6 +268,7 @@ class ensemble {
   std::shared_ptr<detail::state_store<X> const> states_;
   std::vector<std::size_t> places_;
   std::vector<std::size_t> indices_;
+  std::vector<double> slot_weights_;
   std::vector<double> weights_;
   double effective_size_ = 0.0;
   std::shared_ptr<weighted_sample<X> const> parent_;

@@ -2,16 +2,23 @@
 #pragma once
 
 #include <cstddef>
+#include <cstdint>
 #include <memory>
+#include <span>
 #include <utility>
 #include <vector>
 
 #include <steelyard/base/algorithm.hpp>
+#include <steelyard/base/elementary.hpp>
+#include <steelyard/base/error.hpp>
 #include <steelyard/base/kernels.hpp>
+#include <steelyard/draw/draws.hpp>
 #include <steelyard/sample/ensemble.hpp>
 #include <steelyard/sample/weighted_sample.hpp>
 
-namespace steelyard::inline v1::detail {
+namespace steelyard::inline v1 {
+
+namespace detail {
 
 /// Weights relative to the largest, counts taken in.
 template <class X>
@@ -47,13 +54,54 @@ ensemble<X> resampled(weighted_sample<X> const& sample, count k, resample_option
   std::size_t const n = static_cast<std::size_t>(k.value());
   std::vector<double> const weights = plain_weights(sample);
   draws source(options.seed, 0, purpose::resample);
-  std::vector<std::size_t> positions = options.scheme == scheme::systematic
-                                           ? systematic_positions(weights, n, source.uniform())
-                                           : multinomial_positions(weights, n, source);
-  if (options.shuffled) shuffle(positions, source);
-  auto [states, places] = gathered(sample.store(), positions);
-  return ensemble<X>(std::move(states), std::move(places), std::move(positions),
+  drawn_slots slots = draw_slots(options.scheme, weights, n, source);
+  if (options.shuffled) shuffle(slots, source);
+  auto [states, places] = gathered(sample.store(), slots.positions);
+  return ensemble<X>(std::move(states), std::move(places), std::move(slots),
                      std::make_shared<weighted_sample<X> const>(sample), options.scheme);
 }
 
-}  // namespace steelyard::inline v1::detail
+}  // namespace detail
+
+template <class X>
+weighted_sample<X> ensemble<X>::as_sample() const {
+  std::vector<std::size_t> order(size());
+  for (std::size_t s = 0; s < size(); ++s) order[s] = s;
+  std::sort(order.begin(), order.end(), [&](std::size_t a, std::size_t b) { return places_[a] < places_[b]; });
+  auto origin = parent_ ? std::make_shared<detail::sample_origin>(*parent_->origin()) : std::make_shared<detail::sample_origin>();
+  std::vector<std::uint32_t> const groups = std::move(origin->groups);
+  std::vector<std::uint64_t> const counts = std::move(origin->counts);
+  std::vector<std::size_t> distinct;
+  std::vector<std::uint64_t> samples;
+  detail::sample_columns columns;
+  origin->groups.clear();
+  origin->counts.clear();
+  origin->findings.clear();
+  origin->drawn = origin->failed = 0;
+  for (std::size_t from = 0, to = 0; from < order.size(); from = to) {
+    std::size_t const slot = order[from], index = indices_[slot];
+    while (to < order.size() && places_[order[to]] == places_[slot]) ++to;
+    double const copies = static_cast<double>(to - from);
+    std::uint64_t units = 1;
+    if (slot_weights_.empty() && !counts.empty()) {
+      // Copies of a state that stood for several samples: those they are likely to be of.
+      units = static_cast<std::uint64_t>(copies / (1.0 + (copies - 1.0) / static_cast<double>(counts[index])));
+      origin->counts.push_back(units);
+    }
+    distinct.push_back(places_[slot]);
+    samples.push_back(parent_ ? origin->sample_of(index) : index);
+    columns.base.push_back(
+        detail::portable_log(slot_weights_.empty() ? copies / static_cast<double>(units) : slot_weights_[slot]));
+    if (!groups.empty()) origin->groups.push_back(groups[index]);
+    origin->drawn += units;
+  }
+  origin->samples = std::move(samples);
+  columns.log_weights = columns.base;
+  columns.base_maximum = *std::max_element(columns.base.begin(), columns.base.end());
+  auto states = states_;
+  if (parent_ && states_ == parent_->store())
+    states = std::make_shared<detail::chosen_states<X> const>(states_, std::move(distinct));
+  return weighted_sample<X>(std::move(states), std::move(columns), std::move(origin), "as_sample");
+}
+
+}  // namespace steelyard::inline v1

@@ -2,21 +2,30 @@
 #pragma once
 
 #include <cstddef>
-#include <cstdint>
 #include <span>
+#include <utility>
 #include <vector>
 
-#include <steelyard/base/algorithm.hpp>
 #include <steelyard/base/count.hpp>
-#include <steelyard/base/elementary.hpp>
 #include <steelyard/draw/draws.hpp>
+#include <steelyard/sample/multinomial.hpp>
+#include <steelyard/sample/residual.hpp>
+#include <steelyard/sample/stratified.hpp>
+#include <steelyard/sample/systematic.hpp>
+#include <steelyard/sample/without_replacement.hpp>
 
 namespace steelyard::inline v1 {
 
-/// How states are drawn in proportion to their weights.
+/// How states are drawn in proportion to their weights. The first four draw
+/// with replacement and give equal slots; the last two draw each state at most
+/// once, and every slot carries a weight.
 enum class scheme {
   systematic,   ///< one uniform number and equal steps: copies differ from k W by less than one
   multinomial,  ///< independently
+  stratified,   ///< one uniform number in each of k equal strata
+  residual,     ///< the whole part of k W for certain, the rest independently
+  priority,     ///< without replacement, the k largest of w/U        [Duffield, Lund & Thorup 2007]
+  successive,   ///< without replacement, one after another in proportion to what is left  [Efraimidis & Spirakis 2006]
 };
 
 struct resample_options {
@@ -27,99 +36,35 @@ struct resample_options {
 
 namespace detail {
 
-/// Positions of k draws in rising order, by steps of equal length from one
-/// uniform start.
-///   unbiased; expected copies k W_i                          [Douc, Cappe & Moulines 2005]
-inline std::vector<std::size_t> systematic_positions(std::span<double const> weights, std::size_t k, double u) {
-  double total = 0.0;
-  std::size_t last = 0;
-  for (std::size_t i = 0; i < weights.size(); ++i) {
-    total += weights[i];
-    if (weights[i] > 0.0) last = i;
-  }
-  std::vector<std::size_t> positions;
-  positions.reserve(k);
-  double const step = total / static_cast<double>(k);
-  double sum = 0.0;
-  for (std::size_t i = 0; i <= last && positions.size() < k; ++i) {
-    sum += weights[i];
-    while (positions.size() < k && (static_cast<double>(positions.size()) + u) * step < sum) positions.push_back(i);
-  }
-  positions.resize(k, last);
-  return positions;
-}
-
-/// Positions of k independent draws in rising order: sorted uniforms from
-/// exponential spacings, then one walk.
-///   U_(j) = (E_1 + ... + E_j) / (E_1 + ... + E_(k+1))       [Devroye, Non-Uniform Random Variate Generation, 1986, ch. V]
-inline std::vector<std::size_t> multinomial_positions(std::span<double const> weights, std::size_t k, draws& source) {
-  double total = 0.0;
-  std::size_t last = 0;
-  for (std::size_t i = 0; i < weights.size(); ++i) {
-    total += weights[i];
-    if (weights[i] > 0.0) last = i;
-  }
-  std::vector<double> at(k);
-  double spacings = 0.0;
-  for (double& each : at) each = spacings += source.exponential(1.0);
-  spacings += source.exponential(1.0);
-  std::vector<std::size_t> positions;
-  positions.reserve(k);
-  double sum = 0.0;
-  for (std::size_t i = 0; i <= last && positions.size() < k; ++i) {
-    sum += weights[i];
-    while (positions.size() < k && at[positions.size()] / spacings * total < sum) positions.push_back(i);
-  }
-  positions.resize(k, last);
-  return positions;
-}
-
 /// Random order, each as likely.                               [Fisher & Yates 1938; Durstenfeld 1964]
-template <class T>
-void shuffle(std::vector<T>& all, draws& source) {
-  for (std::size_t i = all.size(); i > 1; --i) std::swap(all[i - 1], all[static_cast<std::size_t>(source.index(i))]);
+inline void shuffle(drawn_slots& slots, draws& source) {
+  for (std::size_t i = slots.positions.size(); i > 1; --i) {
+    auto const j = static_cast<std::size_t>(source.index(i));
+    std::swap(slots.positions[i - 1], slots.positions[j]);
+    if (!slots.weights.empty()) std::swap(slots.weights[i - 1], slots.weights[j]);
+  }
 }
 
-/// Variance of the mean over k systematic draws, given weights and values: exact,
-/// since the mean is a step function of the one uniform number.
-///   k M(U) = const - sum_i (f_i - f_(i+1)) 1{U > frac(k C_i)}
-/// Cost  one sort of the fractions.
-inline double systematic_variance(std::span<double const> weights, std::span<double const> values, std::size_t k) {
-  double total = 0.0;
-  for (double const w : weights) total += w;
-  struct jump {
-    double at, size;
-  };
-  std::vector<jump> jumps;
-  double sum = 0.0, before = 0.0;
-  bool any = false;
-  for (std::size_t i = 0; i < weights.size(); ++i) {
-    if (!(weights[i] > 0.0)) continue;
-    if (any) {
-      double const place = sum / total * static_cast<double>(k);
-      jumps.push_back({place - static_cast<double>(static_cast<std::uint64_t>(place)), values[i] - before});
-    }
-    sum += weights[i];
-    before = values[i];
-    any = true;
+/// Slots as positions in rising order, and what each weighs where they are not equal.
+inline drawn_slots draw_slots(scheme how, std::span<double const> weights, std::size_t k, draws& source) {
+  switch (how) {
+    case scheme::multinomial: return {multinomial_positions(weights, k, source), {}};
+    case scheme::stratified: return {stratified_positions(weights, k, source), {}};
+    case scheme::residual: return {residual_positions(weights, k, source), {}};
+    case scheme::priority: return drawn_once(weights, k, false, source);
+    case scheme::successive: return drawn_once(weights, k, true, source);
+    case scheme::systematic: break;
   }
-  std::sort(jumps.begin(), jumps.end(), [](jump const& a, jump const& b) { return a.at < b.at; });
-  double level = 0.0, start = 0.0, mean = 0.0;
-  for (jump const& each : jumps) {
-    mean += level * (each.at - start);
-    level += each.size;
-    start = each.at;
-  }
-  mean += level * (1.0 - start);
-  double variance = 0.0;
-  level = start = 0.0;
-  for (jump const& each : jumps) {
-    variance += (level - mean) * (level - mean) * (each.at - start);
-    level += each.size;
-    start = each.at;
-  }
-  variance += (level - mean) * (level - mean) * (1.0 - start);
-  return variance / (static_cast<double>(k) * static_cast<double>(k));
+  return {systematic_positions(weights, k, source.uniform()), {}};
+}
+
+/// Variance of the mean over k equal slots, given weights and values. @pre a scheme with replacement
+inline double resampling_variance(scheme how, std::span<double const> weights, std::span<double const> values,
+                                  std::size_t k) {
+  return how == scheme::systematic   ? systematic_variance(weights, values, k)
+         : how == scheme::stratified ? stratified_variance(weights, values, k)
+         : how == scheme::residual   ? residual_variance(weights, values, k)
+                                     : multinomial_variance(weights, values, k);
 }
 
 }  // namespace detail
