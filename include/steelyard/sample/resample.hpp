@@ -72,30 +72,31 @@ weighted_sample<X> ensemble<X>::as_sample() const {
   std::vector<std::uint32_t> const groups = std::move(origin->groups);
   std::vector<std::uint64_t> const counts = std::move(origin->counts);
   std::vector<std::size_t> distinct;
-  std::vector<std::uint64_t> samples;
+  std::vector<std::uint64_t> samples, units;
   detail::sample_columns columns;
   origin->groups.clear();
   origin->counts.clear();
+  origin->copies_before.clear();
   origin->findings.clear();
-  origin->drawn = origin->failed = 0;
+  origin->failed = 0;
   for (std::size_t from = 0, to = 0; from < order.size(); from = to) {
     std::size_t const slot = order[from], index = indices_[slot];
     while (to < order.size() && places_[order[to]] == places_[slot]) ++to;
     double const copies = static_cast<double>(to - from);
-    std::uint64_t units = 1;
-    if (slot_weights_.empty() && !counts.empty()) {
-      // Copies of a state that stood for several samples: those they are likely to be of.
-      units = static_cast<std::uint64_t>(copies / (1.0 + (copies - 1.0) / static_cast<double>(counts[index])));
-      origin->counts.push_back(units);
-    }
+    units.push_back(1);  // copies of a state that stood for several samples: of how many of them, at a guess
+    if (slot_weights_.empty() && !counts.empty())
+      units.back() = static_cast<std::uint64_t>(copies / (1.0 + (copies - 1.0) / static_cast<double>(counts[index])));
     distinct.push_back(places_[slot]);
     samples.push_back(parent_ ? origin->sample_of(index) : index);
     columns.base.push_back(
-        detail::portable_log(slot_weights_.empty() ? copies / static_cast<double>(units) : slot_weights_[slot]));
+        detail::portable_log(slot_weights_.empty() ? copies / static_cast<double>(units.back()) : slot_weights_[slot]));
     if (!groups.empty()) origin->groups.push_back(groups[index]);
-    origin->drawn += units;
   }
-  origin->samples = std::move(samples);
+  origin->drawn = units.size();
+  if (counts.empty())
+    origin->samples = std::move(samples);
+  else
+    origin->take_counts(std::move(units));
   columns.log_weights = columns.base;
   columns.base_maximum = *std::max_element(columns.base.begin(), columns.base.end());
   auto states = states_;
