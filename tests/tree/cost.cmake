@@ -12,7 +12,7 @@ foreach(door IN ITEMS core steelyard)
     message(FATAL_ERROR "cost: ${header} is missing")
   endif()
   execute_process(
-    COMMAND "${COMPILER}" -std=c++20 -E -P -x c++ "-I${ROOT}/include" "${header}"
+    COMMAND "${COMPILER}" -std=c++20 -E -P "-I${ROOT}/include" -include "${header}" -x c++ /dev/null
     COMMAND wc -l
     OUTPUT_VARIABLE lines
     RESULTS_VARIABLE results
