@@ -30,10 +30,10 @@ class column_estimator {
   [[nodiscard]] Readout const& readout() const noexcept { return readout_; }
 
   void add(std::span<double const>, std::span<double const>, weighted_view const& view) {
-    values_.assign(view.values.begin(), view.values.end());
-    weights_.assign(view.weights.begin(), view.weights.end());
-    counts_.assign(view.counts.begin(), view.counts.end());
-    groups_.assign(view.groups.begin(), view.groups.end());
+    values_.insert(values_.end(), view.values.begin(), view.values.end());
+    weights_.insert(weights_.end(), view.weights.begin(), view.weights.end());
+    counts_.insert(counts_.end(), view.counts.begin(), view.counts.end());
+    groups_.insert(groups_.end(), view.groups.begin(), view.groups.end());
   }
   void rescale(double factor) {
     for (double& each : weights_) each *= factor;
