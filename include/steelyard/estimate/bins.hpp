@@ -15,6 +15,19 @@
 
 namespace steelyard::inline v1 {
 
+class bins;
+namespace detail {
+bins choose_bins(std::vector<std::pair<double, double>> pilot, double dimensions);
+}
+
+/// Where edges came from.
+enum class edge_choice {
+  given,   ///< by the caller
+  spread,  ///< from the distance between the quartiles
+  range,   ///< from the range, since the quartiles coincide
+  point,   ///< one unit around the only value there is
+};
+
 /// The edges of a histogram: closed left, open right, the last bin closed on
 /// both sides. Cells 0 to size() - 1 are the bins; then come below, above, NaN.
 class bins {
@@ -25,6 +38,7 @@ class bins {
   [[nodiscard]] std::size_t size() const noexcept { return edges_->size() - 1; }
   [[nodiscard]] double edge(std::size_t i) const noexcept { return (*edges_)[i]; }
   [[nodiscard]] double width(std::size_t b) const noexcept { return (*edges_)[b + 1] - (*edges_)[b]; }
+  [[nodiscard]] edge_choice chosen() const noexcept { return chosen_; }
 
   /// The cell of a value: even edges by one product and a step, others by bisection.
   [[nodiscard]] std::size_t cell(double x) const noexcept {
@@ -44,6 +58,7 @@ class bins {
 
  private:
   friend bins equal_bins(double, double, std::size_t);
+  friend bins detail::choose_bins(std::vector<std::pair<double, double>>, double);
 
   bins(std::vector<double> edges, double per_width) : per_width_(per_width) {
     if (edges.size() < 2) throw bad_argument("histogram: a histogram needs at least two edges");
@@ -56,6 +71,7 @@ class bins {
 
   std::shared_ptr<std::vector<double> const> edges_;
   double per_width_ = 0.0;
+  edge_choice chosen_ = edge_choice::given;
 };
 
 /// n bins of equal width. @throws bad_argument unless lower < upper, both finite, and n >= 1.
@@ -86,19 +102,23 @@ class bins {
 
 /// Edges that the first 4096 entries of positive weight choose: see `automatic_bins`.
 struct automatic_bins_t {};
-/// Automatic edges: Freedman-Diaconis width 2 IQR n_eff^(-1/3) on the effective
-/// size, between the quantiles 0.001 and 0.999, 5 to 200 bins; where the
-/// quartiles coincide the whole range is cut into 5 bins, where all values do,
-/// one unit around it. The edges are recorded in the result.
-///   [Freedman & Diaconis, Z. Wahrscheinlichkeitstheorie 57, 1981, 453]
+/// Automatic edges: width 2 IQR n^(-1/3), n the effective size of those entries, from their quantile 0.001 to 0.999,
+/// 5 to 200 bins. Where the quartiles coincide, the range takes their place, as wide against them as in a normal law;
+/// where those two quantiles do, all entries make the range; where all values do, it is a unit around them.
+/// In two dimensions the power is -1/4. The result records the edges and how they were chosen.
+///   [Freedman & Diaconis, Z. Wahrscheinlichkeitstheorie 57, 1981, 453; Scott, Multivariate Density Estimation, 1992, ch. 3]
 inline constexpr automatic_bins_t automatic_bins{};
 
 namespace detail {
 
-/// Chooses automatic edges from a weighted pilot.
-inline bins choose_bins(std::vector<std::pair<double, double>> pilot) {
+/// Chooses automatic edges from a weighted pilot, for a histogram in so many dimensions.
+inline bins choose_bins(std::vector<std::pair<double, double>> pilot, double dimensions) {
   std::erase_if(pilot, [](auto const& each) { return !is_finite(each.first); });
-  if (pilot.empty()) return equal_bins(-0.5, 0.5, 1);
+  auto const recorded = [](bins edges, edge_choice how) {
+    edges.chosen_ = how;
+    return edges;
+  };
+  if (pilot.empty()) return recorded(equal_bins(-0.5, 0.5, 1), edge_choice::point);
   std::stable_sort(pilot.begin(), pilot.end(), [](auto const& a, auto const& b) { return a.first < b.first; });
   double total = 0.0, squares = 0.0;
   for (auto const& [x, w] : pilot) {
@@ -111,19 +131,20 @@ inline bins choose_bins(std::vector<std::pair<double, double>> pilot) {
       if ((sum += w) >= p * total) return x;
     return pilot.back().first;
   };
-  double lower = at(0.001), upper = at(0.999);
-  double const spread = at(0.75) - at(0.25);
+  double lower = at(0.001), upper = at(0.999), spread = at(0.75) - at(0.25);
+  edge_choice const how = spread > 0.0 ? edge_choice::spread : edge_choice::range;
   if (!(lower < upper)) {
     lower = pilot.front().first;
     upper = pilot.back().first;
   }
   if (!(lower < upper)) {
     double const half = std::max(0.5, std::abs(lower) * 1e-3);
-    return equal_bins(lower - half, upper + half, 5);
+    return recorded(equal_bins(lower - half, upper + half, 5), edge_choice::point);
   }
-  double n = 5.0;
-  if (spread > 0.0) n = std::ceil((upper - lower) / (2.0 * spread / std::cbrt(total * (total / squares))));
-  return equal_bins(lower, upper, static_cast<std::size_t>(std::clamp(n, 5.0, 200.0)));
+  constexpr double quartiles_in_range = 1.3489795 / 6.1804646;  // of a normal law, from quantile 0.001 to 0.999
+  if (how == edge_choice::range) spread = (upper - lower) * quartiles_in_range;
+  double const n = std::ceil((upper - lower) / (2.0 * spread) * std::pow(total * (total / squares), 1.0 / (2.0 + dimensions)));
+  return recorded(equal_bins(lower, upper, static_cast<std::size_t>(std::clamp(n, 5.0, 200.0))), how);
 }
 
 }  // namespace detail

@@ -41,7 +41,7 @@ class histogram_estimator {
     std::vector<std::pair<double, double>> pilot;
     pilot.reserve(values.size());
     for (std::size_t i = 0; i < values.size(); ++i) pilot.emplace_back(values[i], weights[i]);
-    edges_ = detail::choose_bins(std::move(pilot));
+    edges_ = detail::choose_bins(std::move(pilot), 1.0);
     cells_.assign(edges_->size() + 3, {});
   }
 
@@ -71,7 +71,7 @@ class histogram_estimator {
   }
 
   [[nodiscard]] histogram_result answer(run_facts const& facts) const {
-    return histogram_result(edges_ ? *edges_ : detail::choose_bins({}), cells_, groups_, facts);
+    return histogram_result(edges_ ? *edges_ : detail::choose_bins({}, 1.0), cells_, groups_, facts);
   }
 
   template <class Self>

@@ -11,6 +11,7 @@
 #include <steelyard/base/text.hpp>
 #include <steelyard/estimate/bins.hpp>
 #include <steelyard/estimate/estimate.hpp>
+#include <steelyard/estimate/mode_result.hpp>
 #include <steelyard/estimate/share_sums.hpp>
 
 namespace steelyard::inline v1 {
@@ -22,7 +23,7 @@ class histogram_result {
  public:
   histogram_result(bins edges, std::vector<detail::cell_sums> cells, detail::grouped_cells const& groups,
                    run_facts const& facts)
-      : edges_(std::move(edges)) {
+      : edges_(std::move(edges)), mode_(edges_, cells, groups, facts) {
     std::size_t const n = cells.size();
     cells.resize(edges_.size() + 3);
     detail::cell_sums inside;
@@ -45,6 +46,8 @@ class histogram_result {
 
   [[nodiscard]] std::size_t size() const noexcept { return edges_.size(); }
   [[nodiscard]] double edge(std::size_t i) const noexcept { return edges_.edge(i); }
+  /// Where the edges came from.
+  [[nodiscard]] edge_choice edges_chosen() const noexcept { return edges_.chosen(); }
 
   /// Probability of bin b, as a share of the whole sample.
   [[nodiscard]] estimate const& probability(std::size_t b) const { return shares_.at(checked(b)); }
@@ -52,6 +55,8 @@ class histogram_result {
   [[nodiscard]] estimate const& probability_inside(std::size_t b) const { return inside_.at(checked(b)); }
   /// Probability density in bin b: its probability over its width, per unit of the readout.
   [[nodiscard]] estimate density(std::size_t b) const { return probability(b).scaled(1.0 / edges_.width(b)); }
+  /// The bin of highest density, and those that cannot be told from it.
+  [[nodiscard]] mode_result const& mode() const noexcept { return mode_; }
   [[nodiscard]] estimate const& below() const noexcept { return shares_[size()]; }
   [[nodiscard]] estimate const& above() const noexcept { return shares_[size() + 1]; }
   [[nodiscard]] estimate const& not_a_number() const noexcept { return shares_[size() + 2]; }
@@ -78,6 +83,7 @@ class histogram_result {
   }
 
   bins edges_;
+  mode_result mode_;
   std::vector<estimate> shares_;
   std::vector<estimate> inside_;
 };
@@ -90,6 +96,8 @@ class histogram_result {
             detail::rounded_to_error(h.probability(b).value, h.probability(b).standard_error) + "\n";
   text += "outside: " + detail::short_number(h.below().value) + " below, " + detail::short_number(h.above().value) +
           " above, " + detail::short_number(h.not_a_number().value) + " not a number";
+  if (h.edges_chosen() == edge_choice::range) text += "\nThe quartiles coincide: the edges follow the range.";
+  if (h.edges_chosen() == edge_choice::point) text += "\nThe edges follow the one value that was seen first.";
   return text;
 }
 

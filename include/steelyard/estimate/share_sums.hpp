@@ -85,6 +85,12 @@ class grouped_cells {
     return *this;
   }
 
+  /// act(group, cell, weight), group by group.
+  template <class Act>
+  void for_each(Act act) const {
+    for (entry const& each : entries_) act(each.group, each.cell, each.weight);
+  }
+
   /// Terms of the share of the cells chosen by `in`, within those chosen by `whole`.
   template <class In, class Whole>
   [[nodiscard]] error_terms terms(In in, Whole whole) const {

@@ -74,6 +74,11 @@ class weighted_column {
     cell_sums const in = first(n), out = rest(n);
     return estimate(in.weight / all_.weight, terms(n, in, out), facts_);
   }
+  /// The same as a probability: on the logit scale, one-sided where it is none or all of them.
+  [[nodiscard]] estimate probability_of_first(std::size_t n) const {
+    cell_sums const in = first(n), out = rest(n);
+    return share_estimate(in.weight, out.weight, terms(n, in, out), in.weight > 0.0, n < size(), facts_);
+  }
 
  private:
   static constexpr std::size_t stride = 256;
