@@ -102,9 +102,20 @@ weighted_sample<X> weigh_states(Holder states, std::size_t size, Weighter const&
 
 }  // namespace detail
 
+namespace detail {
+
+/// True for a range that owns its elements (const reaches them) and is handed over: they may be moved out.
+template <class Range>
+inline constexpr bool gives_elements_v =
+    !std::is_reference_v<Range> && !std::is_const_v<Range> &&
+    std::is_same_v<decltype(*std::begin(std::declval<Range&>())), std::iter_value_t<decltype(std::begin(std::declval<Range&>()))>&> &&
+    std::is_const_v<std::remove_reference_t<decltype(*std::begin(std::declval<Range const&>()))>>;
+
+}  // namespace detail
+
 /// Weighs an ensemble as it stands: the states of a range, one after another.
-/// A vector passed as an rvalue is moved, `std::span<X const>` is borrowed and must outlive the sample, any
-/// other range is copied.
+/// A vector passed as an rvalue is moved, as are the elements of any other container; `std::span<X const>` is
+/// borrowed and must outlive the sample; lvalues are copied.
 /// @throws bad_argument  for an empty range or options of another length
 /// @throws bad_weight    for a likelihood or prior weight that is no number, negative or infinite
 /// @throws no_likelihood where no state has any
@@ -114,7 +125,7 @@ template <class Range, class Weighter>
     std::end(range);
   })
 auto weigh(Range&& range, Weighter const& weighter, weigh_options options = {}) {
-  using X = std::remove_cvref_t<decltype(*std::begin(range))>;
+  using X = std::iter_value_t<decltype(std::begin(range))>;
   static_assert(weighter_for<Weighter, X>, "steelyard: weigh() takes a weighter of these states: it is called as const "
                                            "and returns log_likelihood or likelihood, never a bare number");
   if constexpr (weighter_for<Weighter, X>) {
@@ -126,10 +137,18 @@ auto weigh(Range&& range, Weighter const& weighter, weigh_options options = {}) 
       std::size_t const size = range.size();
       return detail::weigh_states<X>(std::move(range), size, weighter, std::move(options));
     } else {
-      detail::state_array<X> copy;
-      for (auto&& each : range) copy.emplace_back(each);
-      std::size_t const size = copy.size();
-      return detail::weigh_states<X>(std::move(copy), size, weighter, std::move(options));
+      detail::state_array<X> own;
+      if constexpr (detail::gives_elements_v<Range>) {
+        for (auto& each : range) own.emplace_back(std::move(each));
+      } else {
+        constexpr bool copies = std::is_constructible_v<X, decltype(*std::begin(range))>;
+        static_assert(copies, "steelyard: weigh() copies the states it is not handed, and these cannot be copied: pass "
+                              "std::move(states), or borrow them as std::span<X const>");
+        if constexpr (copies)
+          for (auto&& each : range) own.emplace_back(std::forward<decltype(each)>(each));
+      }
+      std::size_t const size = own.size();
+      return detail::weigh_states<X>(std::move(own), size, weighter, std::move(options));
     }
   }
 }
