@@ -24,7 +24,7 @@ struct base_influence {
 struct run_facts {
   std::uint64_t drawn = 0;   ///< samples, failed runs and counts included
   std::uint64_t zeros = 0;   ///< states of weight zero
-  std::uint64_t failed = 0;  ///< runs that gave no state
+  std::uint64_t failed = 0;  ///< runs that gave no state; 0 once an event is given, since they are in none
   double maximum = 0.0;      ///< the running maximum: weights are relative to its exponential
   double sum = 0.0;          ///< of those weights
   double sum_squares = 0.0;  ///< of those weights; with counts, each copy on its own

@@ -27,6 +27,7 @@ struct sample_columns {
   bool base_known = false;                   ///< after tempering: e^b averages to e^-log_base by construction
   std::vector<std::string> names;            ///< of the likelihood columns
   std::vector<std::vector<double>> scores;   ///< a column each; empty where the one column is `log_weights` itself
+  bool given = false;                        ///< an event is given: failed runs are in none, and count no more
   bool bound_known = false;
   double log_bound = 0.0;
 

@@ -50,6 +50,7 @@ inline sample_columns only_base(sample_columns const& from) {
   to.base = from.base;
   to.base_maximum = from.base_maximum;
   to.log_base = from.log_base;
+  to.given = from.given;
   to.base_known = from.base_known;
   return to;
 }
@@ -85,6 +86,7 @@ inline sample_columns given_event(sample_columns const& from, std::span<double c
   if (to.base.empty()) to.base.assign(held.size(), 0.0);
   if (to.base_known) to.log_base = 0.0;  // the event's own prior probability is not known: it is summed
   to.base_known = false;
+  to.given = true;
   to.base_maximum = impossible;
   for (std::size_t i = 0; i < held.size(); ++i) {
     if (held[i] == 0.0) to.base[i] = to.log_weights[i] = impossible;

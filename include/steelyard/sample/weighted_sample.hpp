@@ -201,6 +201,7 @@ class weighted_sample {
     run_facts facts = detail::facts_of(totals_, *origin_);
     facts.base_maximum = columns_->base_maximum;
     facts.base = columns_->log_base;
+    if (columns_->given) facts.failed = 0;
     if (!columns_->base_known) facts.influence = nullptr;
     facts.bound_known = columns_->bound_known;
     facts.log_bound = columns_->log_bound;
