@@ -189,7 +189,8 @@ TEST_CASE("blocks of 1024 summed pairwise give the sums of the whole") {
   sy::pairwise_sum<sy::weight_sums> blocks;
   for (std::size_t first = 0; first < logs.size(); first += 1024) {
     std::size_t const size = std::min<std::size_t>(1024, logs.size() - first);
-    blocks.add(sy::weights_from_logs(std::span(logs).subspan(first, size), 0.0, std::span(weights).subspan(first, size)));
+    auto const in = std::span(logs).subspan(first, size);
+    blocks.add(sy::weights_from_logs(in, 0.0, std::span(weights).subspan(first, size)));
   }
   CHECK(same_bits(blocks.total().sum, whole.sum));
   CHECK(same_bits(blocks.total().sum_squares, whole.sum_squares));

@@ -122,7 +122,8 @@ namespace {
 
 class marked_words final : public sy::word_source {
  public:
-  void fill(std::uint64_t seed, std::uint64_t sample, std::uint64_t first, std::span<std::uint64_t> out) const override {
+  void fill(std::uint64_t seed, std::uint64_t sample, std::uint64_t first,
+            std::span<std::uint64_t> out) const override {
     for (std::size_t k = 0; k < out.size(); ++k) out[k] = seed * 1'000'000 + sample * 1000 + first + k;
   }
 };
@@ -223,7 +224,8 @@ TEST_CASE("bad arguments are refused in a sentence") {
         "draws::normal: the standard deviation is -1; it must be zero or a positive finite number");
   CHECK(refusal([&] { d.normal(0.0, nan); }) != "accepted");
   CHECK(refusal([&] { d.normal(infinity, 1.0); }) != "accepted");
-  CHECK(refusal([&] { d.exponential(0.0); }) == "draws::exponential: the rate is 0; it must be a positive finite number");
+  CHECK(refusal([&] { d.exponential(0.0); }) ==
+        "draws::exponential: the rate is 0; it must be a positive finite number");
   CHECK(refusal([&] { d.exponential(-2.0); }) != "accepted");
   CHECK(refusal([&] { d.exponential(nan); }) != "accepted");
   CHECK(refusal([&] { d.exponential(infinity); }) != "accepted");

@@ -159,5 +159,6 @@ double quantile(wedge_complement const& c) { return std::sqrt(1.0 - c.q); }
 TEST_CASE("from: a user's own distribution") {
   sy::draws d(1);
   sy::draws twin(1);
-  for (int k = 0; k < 100; ++k) CHECK(d.from(mine::wedge{}) == doctest::Approx(std::sqrt(twin.uniform())).epsilon(1e-12));
+  for (int k = 0; k < 100; ++k)
+    CHECK(d.from(mine::wedge{}) == doctest::Approx(std::sqrt(twin.uniform())).epsilon(1e-12));
 }

@@ -163,9 +163,9 @@ TEST_CASE("from: discrete draws are distributed as they should be") {
     };
     for (std::size_t k = 0; k < seen.size(); ++k) {
       double const value = static_cast<double>(k);
-      double const expected = value < double(support(distribution).first) || value > double(support(distribution).second)
-                                  ? 0.0
-                                  : n * pdf(distribution, value);
+      auto const [first, last] = support(distribution);
+      bool const inside = value >= static_cast<double>(first) && value <= static_cast<double>(last);
+      double const expected = inside ? n * pdf(distribution, value) : 0.0;
       if (expected == 0.0) CHECK(seen[k] == 0.0);
       pooled_seen += seen[k];
       pooled_expected += expected;

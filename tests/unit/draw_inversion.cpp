@@ -39,7 +39,7 @@ std::vector<std::uint64_t> some_words() {
 
 // The probability of a word's tail, with all its 64 bits and the half.
 long double tail_of(std::uint64_t word) {
-  return (static_cast<long double>(word) + 0.5L) * 0x1p-64L;  // long double holds 64 bits; the half tips at most one more
+  return (static_cast<long double>(word) + 0.5L) * 0x1p-64L;  // a long double here holds 64 bits
 }
 
 }  // namespace
@@ -52,7 +52,8 @@ TEST_CASE("normal deviates agree with Boost.Math to 1e-15 in both tails") {
     long double const p = tail_of(lower ? word : ~word);
     long double z = quantile(normal, p);
     if (p > 0.4999L) {  // 1/2 - p is exact; near zero the quantile is that distance times sqrt(2 pi), to third order
-      long double const q = (static_cast<long double>((std::uint64_t{1} << 63) - 1 - (lower ? word : ~word)) + 0.5L) * 0x1p-64L;
+      std::uint64_t const distance = (std::uint64_t{1} << 63) - 1 - (lower ? word : ~word);
+      long double const q = tail_of(distance);
       long double const slope = 2.506628274631000502415765284811L;
       z = -slope * q * (1.0L + slope * slope * q * q / 6.0L);
     }

@@ -118,8 +118,8 @@ inline double student_upper(double t, double dof) noexcept {
 inline double student_cdf(double t, double dof) noexcept { return student_upper(-t, dof); }
 
 /// t with P(T > t) = q for Student's t: relative error below 1e-10, the degrees of
-/// freedom any positive real number. Where the deviate is out of range, the
-/// largest double.
+/// freedom any positive real number. Where the deviate is out of range or the
+/// degrees of freedom are not positive, the largest double.
 ///   Newton's method for the logarithm of the probability as a function of
 ///   log t, which is concave; from 10 000 degrees the expansion about the normal.
 /// @pre 0 < q < 1
@@ -128,7 +128,7 @@ inline double student_upper_quantile(double q, double dof) noexcept {
   constexpr double largest = std::numeric_limits<double>::max();
   if (q == 0.5) return 0.0;
   if (q > 0.5) return -student_upper_quantile(1.0 - q, dof);
-  if (!(dof > 0.0)) return largest;
+  if (is_nan(dof) || !(dof > 0.0)) return largest;
   double const z = normal_upper_quantile(q);
   if (dof > many_degrees && z * z < dof / 100.0) return z + student_excess(z, dof);
 
