@@ -55,8 +55,9 @@ class csv_file {
         continue;
       }
       if (fields.size() != header_.size())
-        throw bad_file(at(line) + "there are " + std::to_string(fields.size()) + " fields where the header names " +
-                       std::to_string(header_.size()) + " columns (a number takes a decimal point, not a comma)");
+        throw bad_file(at(line) + (fields.size() == 1 ? "there is 1 field" : "there are " + std::to_string(fields.size()) + " fields") +
+                       " where the header names " + std::to_string(header_.size()) +
+                       " columns (a number takes a decimal point, not a comma)");
       rows_.push_back({line, std::move(fields)});
     }
     if (in.bad()) throw bad_file(path_ + ": it could not be read to its end");
@@ -68,7 +69,7 @@ class csv_file {
   [[nodiscard]] std::vector<row> const& rows() const { return rows_; }
 
   /// Where a column stands. @throws bad_file where it is missing or named twice, with the columns there are
-  [[nodiscard]] std::size_t column(std::string_view name) const {
+  std::size_t column(std::string_view name) const {
     auto const found = std::find(header_.begin(), header_.end(), name);
     if (found == header_.end()) {
       std::string there;
@@ -81,11 +82,11 @@ class csv_file {
   }
 
   /// The number in a field. @throws bad_file where it is something else
-  [[nodiscard]] double number(row const& of, std::size_t column) const {
+  double number(row const& of, std::size_t column) const {
     std::string const& text = of.fields[column];
     double value = 0.0;
     char const* const end = text.data() + text.size();
-    char const* const begin = text.data() + (text.starts_with('+') ? 1 : 0);
+    char const* const begin = text.data() + (text.starts_with('+') && !text.starts_with("+-") ? 1 : 0);
     auto const [stop, problem] = std::from_chars(begin, end, value);
     // "nan" and "inf" are read too, but hold no digit.
     bool const digits = std::any_of(text.begin(), text.end(), [](char c) { return c >= '0' && c <= '9'; });

@@ -60,20 +60,30 @@ struct steady_flow {
   double gradient_downstream;  // Pa/m, between leak and consumer
 };
 
-/// The flow that fits: what leaves depends on the pressure at the leak, and that on what flows to it.
-/// Iterated to 1e-10 of the flow; each round shrinks the error by q h / ((Q + q) p), with h the pressure lost before the
-/// leak and p the pressure at it.
-/// @throws std::domain_error where it does not settle: friction uses up the inlet pressure before the leak
+/// The flow that fits: what leaves depends on the pressure at the leak, and that on what flows to it. With q leaking, Q
+/// delivered, h the pressure lost before the leak and p that at it, q - orifice(p) rises with q at a rate of about
+/// 1 + q h / ((Q + q) p); Newton's steps with that rate, kept between the flows already known to be too small and too large,
+/// until a step is below 1e-12 of the flow.
+/// @throws std::domain_error where friction uses up the inlet pressure before the leak even if nothing leaks
 inline steady_flow solve(pipe const& along, fluid const& water, double inlet_pressure, double demand, double position,
                          double opening) {
-  double leak_flow = orifice_flow(opening, inlet_pressure, water);
-  for (int round = 0; round < 100; ++round) {
-    double const before = leak_flow, gradient = pressure_gradient(demand + leak_flow, along, water);
-    leak_flow = orifice_flow(opening, inlet_pressure - gradient * position, water);
-    if (std::abs(leak_flow - before) <= 1e-10 * (demand + leak_flow))
-      return {leak_flow, pressure_gradient(demand + leak_flow, along, water), pressure_gradient(demand, along, water)};
+  double const downstream = pressure_gradient(demand, along, water);
+  if (!(inlet_pressure - downstream * position > 0.0))
+    throw std::domain_error("solve: the inlet pressure is used up by friction before the leak; it cannot drive this demand");
+  double too_small = 0.0, too_large = orifice_flow(opening, inlet_pressure, water), leak_flow = too_large;
+  for (int round = 0; round < 200; ++round) {
+    double const upstream = pressure_gradient(demand + leak_flow, along, water), lost = upstream * position;
+    double const pressure = inlet_pressure - lost, leaves = orifice_flow(opening, pressure, water);
+    (leaves < leak_flow ? too_large : too_small) = leak_flow;
+    double next = 0.5 * (too_small + too_large);
+    if (pressure > 0.0) {
+      double const step = (leaves - leak_flow) / (1.0 + leaves * lost / ((demand + leak_flow) * pressure));
+      if (std::abs(step) <= 1e-12 * (demand + leak_flow)) return {leak_flow, upstream, downstream};
+      if (leak_flow + step > too_small && leak_flow + step < too_large) next = leak_flow + step;
+    }
+    leak_flow = next;
   }
-  throw std::domain_error("solve: the flow does not settle: friction uses up the inlet pressure before the leak");
+  throw std::domain_error("solve: the flow does not settle");
 }
 
 }  // namespace leak

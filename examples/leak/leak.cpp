@@ -66,7 +66,8 @@ void print_sections(std::ostream& out, sy::histogram_result const& before, sy::h
     sy::estimate const &prior = before.probability(b), &answer = after.probability(b);
     std::string line = "  " + std::string(4 - from.size(), ' ') + from + " to " + std::string(4 - to.size(), ' ') + to + "   " +
                        leak::on_point(leak::percent(prior), 2, 17) + leak::bar(prior, full, bar_width).substr(0, column - 17) +
-                       leak::on_point(leak::percent(answer), 3, 16) + leak::bar(answer, full, bar_width);
+                       leak::on_point(leak::percent(answer), 3, 17) +
+                       (answer.verdict() == sy::verdict::broken ? std::string(bar_width, ' ') : leak::bar(answer, full, bar_width));
     if (answer.verdict() != sy::verdict::sound) line += "  " + std::string(to_string(answer.verdict()));
     out << line.substr(0, line.find_last_not_of(' ') + 1) << '\n';
   }
@@ -131,6 +132,26 @@ auto weighter_for(leak::readings const& read, leak::csv_file const& file) {
   }
 }
 
+/// Refuses to answer where hardly any state explains the readings, and says which reading no state comes near.
+template <class Sample>
+void refuse_no_fit(Sample const& sample, leak::readings const& read, leak::csv_file const& file) {
+  if (sample.diagnosis().verdict() != sy::verdict::broken) return;
+  auto const far_from = [&](std::string const& name, leak::instrument_row const& row, auto const& readout, double sd, char const* unit) {
+    double nearest = 1e300;
+    for (double const value : sample.values(readout, true)) nearest = std::min(nearest, std::abs(value - row.value));
+    if (nearest > 3.0 * sd)
+      throw leak::bad_file(file.at(row.line) + "no state comes within " + fixed(nearest, 1) + ' ' + unit + " of what " + name +
+                           " reads; check it, and what is taken for granted of the main");
+  };
+  auto const pressure_at = [](double x) { return [x](leak::state const& s) { return s.pressure_at(x); }; };
+  far_from("logger 1", read.logger_1, pressure_at(read.logger_1.position), leak::logger_sd, "kPa");
+  far_from("logger 2", read.logger_2, pressure_at(read.logger_2.position), leak::logger_sd, "kPa");
+  far_from("the make-up meter", read.meter, &leak::state::leak_flow, leak::meter_sd, "L/s");
+  throw leak::bad_file(file.path() + ": hardly any state explains these readings together: " + std::to_string(sample.drawn()) +
+                       " are worth " + fixed(sample.diagnosis().effective_size(), 1) +
+                       " equal ones, too few for an answer; check the readings, or draw more with --samples");
+}
+
 int answer(leak::options const& chosen) {
   leak::csv_file const file(chosen.readings);
   leak::readings const read = leak::readings_from(file);
@@ -139,6 +160,7 @@ int answer(leak::options const& chosen) {
   auto const start = std::chrono::steady_clock::now();
   sy::pipeline const pipe{&leak::simulate, weighter_for(read, file)};
   auto const sample = pipe.run({.size = chosen.samples, .seed = chosen.seed, .threads = static_cast<unsigned>(chosen.threads)});
+  refuse_no_fit(sample, read, file);
   auto const over_2 = [](leak::state const& s) { return s.leak_flow > 2.0; };
   auto const by_section = sy::histogram(&leak::state::position, sy::equal_bins(0.0, leak::length, sections));
   auto const [where, over, flow, between, evidence] =

@@ -15,7 +15,7 @@ namespace leak {
 struct options {
   std::string readings;
   std::string states = "leak_states.csv";
-  std::uint64_t samples = 400'000;
+  std::uint64_t samples = 1'000'000;
   std::uint64_t seed = 1;
   std::uint64_t threads = 1;
   bool check = false;
@@ -26,7 +26,7 @@ inline constexpr std::string_view usage =
     "leak [options] READINGS: where a district-heating main loses water, from two pressure loggers and a meter.\n"
     "  --readings FILE  the readings, as a CSV file (the same as giving the file alone)\n"
     "  --states FILE    where 200 states for follow-on runs go (default: leak_states.csv)\n"
-    "  --samples N      how many states to draw (default: 400000)\n"
+    "  --samples N      how many states to draw (default: 1000000)\n"
     "  --seed N         which random numbers; the same seed gives the same answer (default: 1)\n"
     "  --threads N      on so many threads, 0 for all cores; the answer is the same (default: 1)\n"
     "  --check          also compare the answer with the true state in the file and with a quadrature\n"

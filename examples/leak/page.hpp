@@ -61,11 +61,14 @@ inline std::string with_error(steelyard::estimate const& e) {
   return fixed(e.value, decimals) + " +- " + fixed(e.standard_error, decimals);
 }
 
-/// A chance in percent, or the most (the least) it can be where no state (every state) showed it.
+/// A chance in percent: with its standard error, or only that it is next to nothing or to all; where no state (every state)
+/// showed it, the most (the least) that it can be.
 inline std::string percent(steelyard::estimate const& chance) {
   steelyard::estimate const e = chance.scaled(100.0);
-  if (e.never_seen()) return "below " + fixed(e.error_interval(0.95).upper, decimals_for(e.error_interval(0.95).upper));
-  if (e.always_seen()) return "above " + fixed(e.error_interval(0.95).lower, 2);
+  if (e.never_seen()) return "under " + fixed(std::max(0.01, e.error_interval(0.95).upper), 2);
+  if (e.always_seen()) return "over " + fixed(std::min(99.99, e.error_interval(0.95).lower), 2);
+  if (e.value + 2.0 * e.standard_error < 0.01) return "under 0.01";
+  if (e.value - 2.0 * e.standard_error > 99.99) return "over 99.99";
   return with_error(e);
 }
 
