@@ -74,6 +74,7 @@ class block {
   void close(how_drawn how) {
     how_ = how;
     totals_ = weight_totals::of(log_weights_, counts_, std::span<double>(weights_.data(), log_weights_.size()));
+    totals_.largest = seen_.take(log_weights_, counts_);
     for (std::size_t j = 0; j < kept_; ++j) kept_weights_[j] = weights_[positions_[j]];
     pick(counts_, kept_counts_);
     pick(groups_, kept_groups_);
@@ -148,6 +149,7 @@ class block {
   std::vector<std::uint64_t> samples_, counts_, kept_counts_, kept_copies_;
   std::vector<std::uint32_t> groups_, kept_groups_;
   weight_totals totals_;
+  top_weights seen_;  // in all blocks that were closed here
 };
 
 }  // namespace steelyard::inline v1::detail

@@ -25,6 +25,7 @@ enum class finding_kind {
   few_groups,      ///< too few independent groups for an error bar
   target_missed,   ///< a target for the standard error was not met within the size
   reading_doubt,   ///< a reading looks off scale
+  heavy_tail,      ///< the largest weights fall off so slowly that error bars settle slowly
 };
 
 /// One sentence with the numbers and the next step.
@@ -39,6 +40,8 @@ class diagnosis {
   struct numbers {
     std::uint64_t drawn = 0, states = 0, zeros = 0, failed = 0;
     double effective_size = 0.0, perplexity = 0.0, largest_share = 0.0, groups = 0.0;
+    double tail_index = 0.0, tail_error = 0.0;
+    bool tail_known = false, bounded = false;
   };
 
   diagnosis() = default;
@@ -50,6 +53,26 @@ class diagnosis {
   [[nodiscard]] double perplexity() const noexcept { return n_.perplexity; }
   /// Largest normalised weight.
   [[nodiscard]] double largest_share() const noexcept { return n_.largest_share; }
+  /// Shape of the generalised Pareto law of the largest weights: from 0.5 on their variance may be infinite, from 1 on
+  /// their mean. Bounded likelihoods reach 0.7 harmlessly. 0 where not known.
+  [[nodiscard]] double tail_index() const noexcept { return n_.tail_index; }
+  /// Its standard error, about.
+  [[nodiscard]] double tail_index_error() const noexcept { return n_.tail_error; }
+  /// False where there are fewer than 25 positive weights, or too many equal ones among the largest.
+  [[nodiscard]] bool tail_known() const noexcept { return n_.tail_known; }
+  /// Whether the weighter declared a bound on the likelihood.
+  [[nodiscard]] bool bounded() const noexcept { return n_.bounded; }
+  /// Whether error bars can be trusted to shrink as n^(-1/2): the likelihood has a declared bound, or the tail index is
+  /// below 0.5 by more than its standard error.
+  [[nodiscard]] bool settles() const noexcept {
+    return n_.bounded || (n_.tail_known && n_.tail_index + n_.tail_error < 0.5);
+  }
+  /// How many samples it takes for answers to settle at all, exp(KL(posterior || prior)), from this sample: samples
+  /// over perplexity. A sample that falls short of it makes it too small.
+  ///                                         [Chatterjee & Diaconis, Ann. Appl. Probab. 28, 2018, 1099]
+  [[nodiscard]] double least_size() const noexcept {
+    return n_.perplexity > 0.0 ? static_cast<double>(n_.drawn) / n_.perplexity : 0.0;
+  }
   /// Share of the states that are impossible.
   [[nodiscard]] double share_of_zeros() const noexcept {
     return n_.states > 0 ? static_cast<double>(n_.zeros) / static_cast<double>(n_.states) : 0.0;
@@ -58,12 +81,13 @@ class diagnosis {
   [[nodiscard]] std::uint64_t failed() const noexcept { return n_.failed; }
   [[nodiscard]] std::span<finding const> findings() const noexcept { return findings_; }
 
-  /// The verdict on the weights alone: sound from an effective size of 50, broken
-  /// below 5. Each estimate has a verdict of its own, which can be worse.
+  /// The verdict on the weights alone: sound from an effective size of 50 unless the tail index is above 0.7, broken
+  /// below a size of 5. Each estimate has a verdict of its own, which can be worse.
   [[nodiscard]] steelyard::verdict verdict() const noexcept {
-    return n_.effective_size >= 50.0  ? steelyard::verdict::sound
-           : n_.effective_size >= 5.0 ? steelyard::verdict::strained
-                                      : steelyard::verdict::broken;
+    bool const heavy = n_.tail_known && n_.tail_index > heavy_from;
+    return n_.effective_size < 5.0             ? steelyard::verdict::broken
+           : n_.effective_size < 50.0 || heavy ? steelyard::verdict::strained
+                                               : steelyard::verdict::sound;
   }
 
  private:
@@ -74,7 +98,12 @@ class diagnosis {
     if (n_.effective_size < 50.0)
       say(finding_kind::few_effective,
           "The weights are worth only " + short_number(n_.effective_size) + " equal draws out of " +
-              short_number(drawn) + ": draw more, or use a tempered run if the reading is this sharp.");
+              short_number(drawn) + ": draw more, or use a tempered run if the reading is this sharp. " + size_advice());
+    if (n_.tail_known && n_.tail_index > heavy_from)
+      say(finding_kind::heavy_tail,
+          "The largest weights fall off slowly, with tail index " + short_number(n_.tail_index) +
+              " where up to 0.7 is well: the next samples may outweigh all so far, unless the likelihood has a bound not "
+              "far above the largest one seen. Let the simulator draw closer to what was read, or use a tempered run.");
     if (n_.largest_share > 0.1)
       say(finding_kind::one_dominates, "One sample holds " + short_number(100.0 * n_.largest_share) +
                                            " % of the weight: what it says is nearly the whole answer.");
@@ -97,6 +126,18 @@ class diagnosis {
       say(finding_kind::few_groups, "There are only " + short_number(n_.groups) +
                                         " independent groups: an error bar wants at least 8 of them.");
   }
+
+  /// How many samples it takes: for answers to settle at all, and, where that can be said, for an effective size of 50.
+  [[nodiscard]] std::string size_advice() const {
+    std::string text = "The reading asks for at least about " + detail::short_number(least_size()) +
+                       " samples before answers settle at all";
+    if (n_.effective_size >= 5.0 && settles())
+      text += "; about " + detail::short_number(static_cast<double>(n_.drawn) * (50.0 / n_.effective_size)) +
+              " would be worth 50 equal draws";
+    return text + ".";
+  }
+
+  static constexpr double heavy_from = 0.7;
 
   numbers n_;
   std::vector<finding> findings_;

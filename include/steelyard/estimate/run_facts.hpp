@@ -20,6 +20,8 @@ struct base_influence {
   double rest_largest = 0.0;     ///< their largest square
 };
 
+class diagnosis;
+
 /// What an estimator may know of the run when it answers.
 struct run_facts {
   std::uint64_t drawn = 0;   ///< samples, failed runs and counts included
@@ -38,6 +40,7 @@ struct run_facts {
   double log_bound = 0.0;             ///< that bound
   bool far_from_drawn = false;        ///< weights far from those that the states were moved under
   std::shared_ptr<base_influence const> influence = {};  ///< of `base`, by lineage; null: none
+  std::shared_ptr<diagnosis const> health = {};               ///< of the weights; null while a run goes on
 
   /// Kish's effective size; 0 where no weight is positive.
   [[nodiscard]] double effective_size() const noexcept {

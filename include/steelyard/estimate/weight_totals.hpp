@@ -11,6 +11,7 @@
 #include <steelyard/base/kernels.hpp>
 #include <steelyard/estimate/diagnosis.hpp>
 #include <steelyard/estimate/run_facts.hpp>
+#include <steelyard/estimate/top_weights.hpp>
 #include <steelyard/weigh/itemised.hpp>
 
 namespace steelyard::inline v1::detail {
@@ -24,6 +25,7 @@ struct weight_totals {
   double samples = 0.0;         ///< sum m, zeros included
   double zeros = 0.0;           ///< sum m where w = 0
   double states = 0.0;          ///< entries, whatever their counts
+  top_weights largest;          ///< log-weights
 
   /// Fills `weights` with exp(log_weight - maximum), 0 where impossible.
   static weight_totals of(std::span<double const> log_weights, std::span<std::uint64_t const> counts,
@@ -63,13 +65,15 @@ struct weight_totals {
     samples += other.samples;
     zeros += other.zeros;
     states += other.states;
+    largest += other.largest;
   }
 
   [[nodiscard]] double effective_size() const noexcept { return squares > 0.0 ? sum * (sum / squares) : 0.0; }
 
   template <class Self>
   static auto fields(Self& self) {
-    return std::tie(self.maximum, self.sum, self.squares, self.logs, self.samples, self.zeros, self.states);
+    return std::tie(self.maximum, self.sum, self.squares, self.logs, self.samples, self.zeros, self.states,
+                    top_weights::fields(self.largest));
   }
 };
 

@@ -105,13 +105,14 @@ auto one_pass(Sampler const& draw, Weighter const& weigh_with, plan const& how, 
     }
     throw no_likelihood(no_likelihood_text("estimate", seen, origin));
   }
-  run_facts const facts = pass_facts(totals, origin, weigh_with);
+  run_facts facts = pass_facts(totals, origin, weigh_with);
+  facts.health = std::make_shared<diagnosis const>(diagnosis_of(totals, origin, origin.findings, facts.bound_known));
   group_facts const grouping = origin.grouping();
   return std::apply(
       [&](auto const&... slot) {
         auto each = std::make_tuple(slot.answer(facts, grouping)...);
         return answers<std::remove_cvref_t<decltype(slot.answer(facts, grouping))>...>(
-            std::move(each), diagnosis_of(totals, origin, origin.findings), origin.drawn, origin.calls);
+            std::move(each), *facts.health, origin.drawn, origin.calls);
       },
       merged->slots);
 }

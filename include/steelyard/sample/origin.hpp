@@ -16,6 +16,7 @@
 #include <steelyard/estimate/accumulation.hpp>
 #include <steelyard/estimate/diagnosis.hpp>
 #include <steelyard/estimate/run_facts.hpp>
+#include <steelyard/estimate/tail_index.hpp>
 
 namespace steelyard::inline v1 {
 
@@ -136,7 +137,8 @@ inline run_facts facts_of(weight_totals const& totals, sample_origin const& orig
   return facts;
 }
 
-inline diagnosis diagnosis_of(weight_totals const& totals, sample_origin const& origin, std::vector<finding> findings) {
+inline diagnosis diagnosis_of(weight_totals const& totals, sample_origin const& origin, std::vector<finding> findings,
+                              bool bounded) {
   diagnosis::numbers n;
   n.drawn = origin.drawn;
   n.failed = origin.failed;
@@ -146,6 +148,11 @@ inline diagnosis diagnosis_of(weight_totals const& totals, sample_origin const& 
   n.perplexity = totals.sum > 0.0 ? totals.sum * portable_exp(-totals.logs / totals.sum) : 0.0;
   n.largest_share = totals.sum > 0.0 ? 1.0 / totals.sum : 0.0;
   n.groups = static_cast<double>(origin.group_shares.size());
+  pareto_tail const tail = tail_of(totals.largest, totals.samples - totals.zeros);
+  n.tail_index = tail.shape;
+  n.tail_error = tail.standard_error;
+  n.tail_known = tail.known;
+  n.bounded = bounded;
   return diagnosis(n, std::move(findings));
 }
 

@@ -192,7 +192,8 @@ class weighted_sample {
     totals.take(0, origin_->blocks(size()), origin_->execute, *pool);
     totals_ = totals.finish()->totals;
     if (!(totals_.maximum > detail::impossible)) throw no_likelihood(detail::no_likelihood_text(where, *columns_, *origin_));
-    health_ = std::make_shared<steelyard::diagnosis const>(detail::diagnosis_of(totals_, *origin_, origin_->findings));
+    health_ = std::make_shared<steelyard::diagnosis const>(
+        detail::diagnosis_of(totals_, *origin_, origin_->findings, columns_->bound_known));
   }
   [[nodiscard]] std::shared_ptr<detail::state_store<X> const> const& store() const noexcept { return states_; }
   [[nodiscard]] detail::sample_columns const& columns() const noexcept { return *columns_; }
@@ -205,6 +206,7 @@ class weighted_sample {
     if (!columns_->base_known) facts.influence = nullptr;
     facts.bound_known = columns_->bound_known;
     facts.log_bound = columns_->log_bound;
+    facts.health = health_;
     if (facts.groups > 0.0) facts.largest_unit = detail::largest_group(*columns_, *origin_, totals_.maximum);
     return facts;
   }
