@@ -29,9 +29,9 @@ class anywhere_instrument : public scalar_instrument<anywhere_instrument> {
   }
   [[nodiscard]] double log_below(double x, double /*truth*/) const { return log_part(lower_, x); }
   [[nodiscard]] double log_above(double x, double /*truth*/) const { return log_part(x, upper_); }
-  [[nodiscard]] double log_around(double c, double h, double /*truth*/) const {
-    if (c - h >= lower_ && c + h <= upper_) return detail::portable_log(2.0 * h) - log_width_;
-    return log_part(c - h, c + h);
+  [[nodiscard]] double log_within(cell const& c, double /*truth*/) const {
+    if (c.lower >= lower_ && c.upper <= upper_) return detail::portable_log(2.0 * c.half) - log_width_;
+    return log_part(c.lower, c.upper);
   }
   [[nodiscard]] double fake(double /*truth*/, draws& d) const { return d.uniform(lower_, upper_); }
 

@@ -57,7 +57,7 @@ class correlated_instrument {
       double rest = reading[i] - detail::finite_truth(name(), truth[i]);
       for (std::size_t j = 0; j < i; ++j) rest -= factor_[i][j] * solved[j];
       solved[i] = detail::deviate(rest, 0.0, factor_[i][i]);
-      sum -= 0.5 * solved[i] * solved[i];
+      sum -= detail::half_square(solved[i]);
     }
     return log_likelihood{sum};
   }

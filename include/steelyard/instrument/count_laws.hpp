@@ -48,7 +48,7 @@ inline double deviance(double x, double mean) {
     }
     return sum;
   }
-  return x * (portable_log(x) - portable_log(mean)) - gap;
+  return x * log_ratio(x, mean) - gap;
 }
 
 /// log(mean^x e^-mean / Gamma(x + 1)), x >= 0, mean >= 0

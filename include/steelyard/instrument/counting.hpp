@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
+#include <algorithm>
 #include <cmath>
 #include <cstdint>
 #include <limits>
@@ -54,9 +55,9 @@ class counting : public scalar_instrument<Self> {
     return k > self().highest_reading() ? impossible : k <= 0.0 ? 0.0 : self().log_at_least(k, truth);
   }
   /// Up to 256 terms one by one; more from the tail that holds less.
-  [[nodiscard]] double log_around(double c, double h, double truth) const {
-    double const first = std::max(std::ceil(c - h), 0.0);
-    double const last = std::min(std::floor(c + h), self().highest_reading());
+  [[nodiscard]] double log_within(cell const& c, double truth) const {
+    double const first = std::max(std::ceil(c.lower), 0.0);
+    double const last = std::min(std::floor(c.upper), self().highest_reading());
     if (first > last) return impossible;
     if (last - first < 256.0) {
       double sum = self().log_mass(first, truth);

@@ -29,9 +29,9 @@ class life_instrument : public scalar_instrument<life_instrument> {
   [[nodiscard]] double log_above(double x, double rate) const {
     return x > 0.0 ? std::max(-rate * x, detail::impossible) : 0.0;
   }
-  [[nodiscard]] double log_around(double c, double h, double rate) const {
-    if (c - h <= 0.0) return log_below(c + h, rate);
-    return detail::log_product(-rate * (c - h), detail::portable_log(-detail::portable_expm1(-2.0 * rate * h)));
+  [[nodiscard]] double log_within(cell const& c, double rate) const {
+    if (c.lower <= 0.0) return log_below(c.upper, rate);
+    return detail::log_product(-rate * c.lower, detail::portable_log(-detail::portable_expm1(-2.0 * rate * c.half)));
   }
   [[nodiscard]] double fake(double rate, draws& d) const {
     if (!(rate > 0.0)) detail::refuse_truth(name(), rate, "above 0 to draw a life");

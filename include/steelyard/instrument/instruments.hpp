@@ -5,6 +5,7 @@
 
 #include <steelyard/instrument/anywhere.hpp>
 #include <steelyard/instrument/binomial_count.hpp>
+#include <steelyard/instrument/cell.hpp>
 #include <steelyard/instrument/class_grader.hpp>
 #include <steelyard/instrument/confusion.hpp>
 #include <steelyard/instrument/correlated_noise.hpp>

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
+#include <algorithm>
 #include <cmath>
 #include <string_view>
 
@@ -26,10 +27,12 @@ class laplace_instrument : public scalar_instrument<laplace_instrument> {
   }
   [[nodiscard]] double log_below(double x, double truth) const { return log_tail(detail::deviate(truth, x, scale_)); }
   [[nodiscard]] double log_above(double x, double truth) const { return log_tail(detail::deviate(x, truth, scale_)); }
-  [[nodiscard]] double log_around(double c, double h, double truth) const {
-    double const m = std::abs(detail::deviate(c, truth, scale_)), w = detail::deviate(h, 0.0, scale_);
-    if (m >= w) return (w - m) + detail::portable_log(-detail::portable_expm1(-2.0 * w)) - log_two;
-    return detail::portable_log(-detail::portable_expm1(-(w + m)) - detail::portable_expm1(-(w - m))) - log_two;
+  [[nodiscard]] double log_within(cell const& c, double truth) const {
+    cell const z = detail::deviates(c, truth, scale_);
+    if (z.lower < 0.0 && z.upper > 0.0)
+      return detail::portable_log(-detail::portable_expm1(z.lower) - detail::portable_expm1(-z.upper)) - log_two;
+    double const near = std::min(std::abs(z.lower), std::abs(z.upper));
+    return -near + detail::portable_log(-detail::portable_expm1(-2.0 * z.half)) - log_two;
   }
   [[nodiscard]] double fake(double truth, draws& d) const {
     detail::tail const t = detail::tail_from_word(d());

@@ -38,6 +38,13 @@ inline double log_difference(double log_p, double log_q) noexcept {
   return log_product(log_p, log_complement(log_q - log_p));
 }
 
+/// log(x / y), x, y > 0, with the digits of x - y where they are near
+inline double log_ratio(double x, double y) noexcept {
+  double const gap = (x - y) / y, ratio = x / y;
+  if (gap > -0.29 && gap < 0.41) return portable_log1p(gap);
+  return ratio > 1e-300 && ratio < 1e300 ? portable_log(ratio) : portable_log(x) - portable_log(y);
+}
+
 /// log of the integral of e^f from c - h to c + h, for a smooth f that changes
 /// little on the way: Gauss-Legendre, 10 points, all terms positive.
 /// @param log_density f

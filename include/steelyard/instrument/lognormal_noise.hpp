@@ -24,32 +24,32 @@ class lognormal_instrument : public scalar_instrument<lognormal_instrument> {
 
   [[nodiscard]] double log_density(double x, double truth) const {
     if (!(truth > 0.0) || !(x > 0.0)) return detail::impossible;
-    double const log_x = detail::portable_log(x);
-    return detail::log_normal_density(away(log_x, truth)) - log_log_sd_ - log_x;
+    return detail::log_normal_density(away(x, truth)) - log_log_sd_ - detail::portable_log(x);
   }
   [[nodiscard]] double log_below(double x, double truth) const {
     if (!(x > 0.0)) return detail::impossible;
-    return truth > 0.0 ? detail::log_normal_above(-away(detail::portable_log(x), truth)) : 0.0;
+    return truth > 0.0 ? detail::log_normal_above(-away(x, truth)) : 0.0;
   }
   [[nodiscard]] double log_above(double x, double truth) const {
     if (!(x > 0.0)) return 0.0;
-    return truth > 0.0 ? detail::log_normal_above(away(detail::portable_log(x), truth)) : detail::impossible;
+    return truth > 0.0 ? detail::log_normal_above(away(x, truth)) : detail::impossible;
   }
-  [[nodiscard]] double log_around(double c, double h, double truth) const {
-    if (c - h <= 0.0) return log_below(c + h, truth);
+  [[nodiscard]] double log_within(cell const& c, double truth) const {
+    if (!(c.lower > 0.0)) return log_below(c.upper, truth);
     if (!(truth > 0.0)) return detail::impossible;
-    double const ratio = h / c;  // centre and half width of log c + log(1 -+ ratio)
-    double const up = detail::portable_log1p(ratio), down = detail::portable_log1p(-ratio);
-    double const z = away(detail::portable_log(c) + 0.5 * detail::portable_log1p(-ratio * ratio), truth);
-    return detail::log_normal_around(z, detail::deviate(0.5 * (up - down), 0.0, log_sd_));
+    double const ratio = c.half / c.centre;  // log(centre) + log(1 -+ ratio)
+    double const middle = 0.5 * detail::portable_log1p(-ratio * ratio) / log_sd_ + away(c.centre, truth);
+    double const half = 0.5 * (detail::portable_log1p(ratio) - detail::portable_log1p(-ratio));
+    return detail::log_normal_within(
+        {away(c.lower, truth), away(c.upper, truth), middle, detail::deviate(half, 0.0, log_sd_), false});
   }
   [[nodiscard]] double fake(double truth, draws& d) const {
     return truth * detail::portable_exp(log_sd_ * d.normal());
   }
 
  private:
-  [[nodiscard]] double away(double log_x, double truth) const {
-    return detail::deviate(log_x, detail::portable_log(truth), log_sd_);
+  [[nodiscard]] double away(double x, double truth) const {
+    return detail::deviate(detail::log_ratio(x, truth), 0.0, log_sd_);
   }
 
   double log_sd_;

@@ -1,7 +1,6 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
-#include <cmath>
 #include <string>
 #include <string_view>
 
@@ -37,10 +36,10 @@ class gaussian : public scalar_instrument<Self> {
   }
   [[nodiscard]] double log_below(double x, double truth) const { return log_tail(truth, x, truth); }
   [[nodiscard]] double log_above(double x, double truth) const { return log_tail(x, truth, truth); }
-  [[nodiscard]] double log_around(double c, double h, double truth) const {
+  [[nodiscard]] double log_within(cell const& c, double truth) const {
     double const sd = self().sd(truth);
-    if (sd > 0.0) return log_normal_around(deviate(c, truth, sd), deviate(h, 0.0, sd));
-    return std::abs(c - truth) <= h ? 0.0 : impossible;
+    if (sd > 0.0) return log_normal_within(deviates(c, truth, sd));
+    return c.lower <= truth && truth <= c.upper ? 0.0 : impossible;
   }
   [[nodiscard]] double fake(double truth, draws& d) const { return d.normal(truth, self().sd(truth)); }
 

@@ -29,11 +29,11 @@ class rounded_instrument
   [[nodiscard]] std::string_view name() const noexcept { return "rounded"; }
   [[nodiscard]] double lowest_reading() const {
     double const low = inner_.lowest_reading();
-    return low > std::numeric_limits<double>::lowest() ? step_ * (cell_of(low) - 0.25) : low;
+    return low > std::numeric_limits<double>::lowest() ? step_ * (step_of(low) - 0.25) : low;
   }
   [[nodiscard]] double highest_reading() const {
     double const high = inner_.highest_reading();
-    return high < 1e300 ? step_ * (cell_of(high) + 0.25) : std::numeric_limits<double>::max();
+    return high < 1e300 ? step_ * (step_of(high) + 0.25) : std::numeric_limits<double>::max();
   }
   [[nodiscard]] std::string shows() const {
     return "multiples of " + detail::plain_number(step_) + ", rounded from " + inner_.shows();
@@ -45,15 +45,17 @@ class rounded_instrument
     base::check(reading);
     bool possible = true;
     if (reading.what() == shown::kind::number) {
-      double const cell = reading.lower() / step_, off = cell - std::floor(cell + 0.5);
-      possible = std::abs(off) <= slack + 1e-15 * std::abs(cell);
+      double const steps = reading.lower() / step_, off = steps - std::floor(steps + 0.5);
+      possible = std::abs(off) <= slack + 1e-15 * std::abs(steps);
     } else if (reading.what() == shown::kind::within) {
       possible = first_from(reading.lower()) <= last_to(reading.upper());
     }
     if (!possible) this->refuse(reading);
   }
 
-  [[nodiscard]] double log_density(double x, truth_t const& truth) const { return log_cells(x, 0.0, truth); }
+  [[nodiscard]] double log_density(double x, truth_t const& truth) const {
+    return log_raw(cell::around(x + (start_ + 0.5 * step_), 0.5 * step_), truth);
+  }
   [[nodiscard]] double log_below(double x, truth_t const& truth) const {
     double const edge = step_ * first_from(x) + start_;
     return inner_.log_below(edge, truth);
@@ -63,32 +65,31 @@ class rounded_instrument
     if constexpr (Instrument::scale_kind == scale_of::whole) return inner_.log_above(first_count(edge) - 0.5, truth);
     return inner_.log_above(edge, truth);
   }
-  [[nodiscard]] double log_around(double c, double h, truth_t const& truth) const {
-    double const first = first_from(c - h), last = last_to(c + h);
+  [[nodiscard]] double log_within(cell const& c, truth_t const& truth) const {
+    double const first = first_from(c.lower), last = last_to(c.upper);
     if (first > last) return detail::impossible;
-    return log_cells(step_ * 0.5 * (first + last), last - first, truth);
+    return log_raw(cell::between(step_ * first + start_, step_ * (last + 1.0) + start_), truth);
   }
   [[nodiscard]] double fake(truth_t const& truth, draws& d) const {
-    return step_ * cell_of(static_cast<double>(inner_.fake(truth, d)));
+    return step_ * step_of(static_cast<double>(inner_.fake(truth, d)));
   }
 
  private:
   static constexpr double slack = 1e-6;  // in steps: what a decimal fraction loses in binary, and a printed digit
 
-  [[nodiscard]] double cell_of(double x) const { return std::floor((x - start_) / step_ + 1e-12); }
+  [[nodiscard]] double step_of(double x) const { return std::floor((x - start_) / step_ + 1e-12); }
   [[nodiscard]] double first_from(double x) const { return std::ceil(x / step_ - slack); }
   [[nodiscard]] double last_to(double x) const { return std::floor(x / step_ + slack); }
   [[nodiscard]] double first_count(double edge) const { return std::ceil(edge - 1e-12 * step_); }
 
-  /// Cells from `more` / 2 steps before the one about x to as many after it.
-  [[nodiscard]] double log_cells(double x, double more, truth_t const& truth) const {
-    double const half = 0.5 * step_ * (more + 1.0), centre = x + (start_ + 0.5 * step_);
+  /// What is rounded lies in `raw`, for whole numbers its upper end excluded.
+  [[nodiscard]] double log_raw(cell const& raw, truth_t const& truth) const {
     if constexpr (Instrument::scale_kind == scale_of::whole) {
-      double const first = first_count(centre - half), last = first_count(centre + half) - 1.0;
+      double const first = first_count(raw.lower), last = first_count(raw.upper) - 1.0;
       if (first > last) return detail::impossible;
-      return inner_.log_around(0.5 * (first + last), 0.5 * (last - first), truth);
+      return inner_.log_within(cell::between(first, last), truth);
     }
-    return inner_.log_around(centre, half, truth);
+    return inner_.log_within(raw, truth);
   }
 
   Instrument inner_;

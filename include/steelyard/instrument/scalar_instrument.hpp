@@ -7,6 +7,7 @@
 
 #include <steelyard/base/error.hpp>
 #include <steelyard/draw/draws.hpp>
+#include <steelyard/instrument/cell.hpp>
 #include <steelyard/instrument/checks.hpp>
 #include <steelyard/instrument/shown.hpp>
 #include <steelyard/weigh/itemised.hpp>
@@ -27,7 +28,7 @@ enum class scale_of { continuous, whole, steps };
 ///   log_density(x, truth)         density, or probability on whole numbers and steps
 ///   log_below(x, truth)           log P(shows less than x)
 ///   log_above(x, truth)           log P(shows more than x)
-///   log_around(c, h, truth)       log P(shows c - h to c + h, ends included), without cancelling
+///   log_within(cell, truth)       log P(shows a number in the cell, ends included), without cancelling
 ///   fake(truth, draws)            one reading
 /// and, where the defaults here do not fit, the members below.
 template <class Self, class Truth = double>
@@ -88,10 +89,7 @@ class scalar_instrument {
     switch (reading.what()) {
       case shown::kind::under: return self().log_below(reading.upper(), truth);
       case shown::kind::over: return self().log_above(reading.lower(), truth);
-      case shown::kind::within: {
-        double const half_lower = 0.5 * reading.lower(), half_upper = 0.5 * reading.upper();
-        return self().log_around(half_upper + half_lower, half_upper - half_lower, truth);
-      }
+      case shown::kind::within: return self().log_within(cell::between(reading.lower(), reading.upper()), truth);
       case shown::kind::number: break;
     }
     return self().log_density(reading.lower(), truth);

@@ -1,7 +1,6 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
-#include <concepts>
 #include <string>
 #include <type_traits>
 
@@ -41,13 +40,13 @@ class shown {
  public:
   enum class kind { number, under, over, within };
 
-  shown(double number) : shown(kind::number, number, number) {}  // NOLINT: implicit on purpose
-  template <std::integral Integer>
-    requires(!std::same_as<std::remove_cv_t<Integer>, bool>)
-  shown(Integer number) : shown(static_cast<double>(number)) {}                               // NOLINT
-  shown(steelyard::under reading) : shown(kind::under, reading.limit, reading.limit) {}       // NOLINT
-  shown(steelyard::over reading) : shown(kind::over, reading.limit, reading.limit) {}         // NOLINT
-  shown(steelyard::within reading) : shown(kind::within, reading.lower, reading.upper) {      // NOLINT
+  template <class Number>
+    requires(std::is_arithmetic_v<Number> && !std::is_same_v<Number, bool>)
+  shown(Number number)  // NOLINT: implicit on purpose
+      : shown(kind::number, static_cast<double>(number), static_cast<double>(number)) {}
+  shown(steelyard::under reading) : shown(kind::under, reading.limit, reading.limit) {}   // NOLINT
+  shown(steelyard::over reading) : shown(kind::over, reading.limit, reading.limit) {}     // NOLINT
+  shown(steelyard::within reading) : shown(kind::within, reading.lower, reading.upper) {  // NOLINT
     if (!(lower_ < upper_))
       throw bad_argument("within: the lower end " + detail::plain_number(lower_) + " is not below the upper end " +
                          detail::plain_number(upper_));

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
+#include <algorithm>
 #include <cmath>
 #include <string_view>
 
@@ -37,19 +38,18 @@ class student_law {
     double const square = r * r;
     return log_beta_below(0.5 * dof_, 0.5, 1.0 / (1.0 + square), square / (1.0 + square)) - 0.69314718055994530942;
   }
-  /// log P(|T - m| <= h): both ends in the same tail, both tails taken from 1,
-  /// or by quadrature where those would cancel.
-  [[nodiscard]] double log_around(double m, double h) const {
-    m = std::abs(m);
-    double const a = m - h, upper = log_above(m + h), slack = dof_ < 1.0 ? 0.1 * dof_ : 0.1;
-    if (a < 0.0) {
-      double const outside = portable_exp(upper) + portable_exp(log_above(-a));
+  /// log P(c.lower < T < c.upper): both ends in the same tail, both tails taken
+  /// from 1, or by quadrature where those would cancel.
+  [[nodiscard]] double log_within(cell const& c) const {
+    if (c.lower < 0.0 && c.upper > 0.0) {
+      double const outside = portable_exp(log_above(c.upper)) + portable_exp(log_above(-c.lower));
       if (outside < 0.9) return portable_log1p(-outside);
     } else {
-      double const near = log_above(a);
-      if (upper - near < -slack) return log_difference(near, upper);
+      double const near = log_above(std::min(std::abs(c.lower), std::abs(c.upper)));
+      double const far = log_above(std::max(std::abs(c.lower), std::abs(c.upper)));
+      if (far - near < -0.1 * std::min(dof_, 1.0)) return log_difference(near, far);
     }
-    return log_integral([this](double z) { return log_density(z); }, m, h);
+    return log_integral([this](double z) { return log_density(z); }, c.centre, c.half);
   }
 
  private:
@@ -81,8 +81,8 @@ class student_instrument : public scalar_instrument<student_instrument> {
   [[nodiscard]] double log_above(double x, double truth) const {
     return law_.log_above(detail::deviate(x, truth, scale_));
   }
-  [[nodiscard]] double log_around(double c, double h, double truth) const {
-    return law_.log_around(detail::deviate(c, truth, scale_), detail::deviate(h, 0.0, scale_));
+  [[nodiscard]] double log_within(cell const& c, double truth) const {
+    return law_.log_within(detail::deviates(c, truth, scale_));
   }
   /// Two uniforms, no rejection  [Bailey, Math. Comput. 62, 1994, 779]
   [[nodiscard]] double fake(double truth, draws& d) const {

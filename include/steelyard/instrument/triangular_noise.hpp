@@ -31,12 +31,13 @@ class triangular_instrument : public scalar_instrument<triangular_instrument> {
   [[nodiscard]] double log_above(double x, double truth) const {
     return log_tail(detail::deviate(x, truth, half_width_));
   }
-  /// Areas of trapezia: on one side of the truth 2h (1 - m), else one for each side.
-  [[nodiscard]] double log_around(double c, double h, double truth) const {
-    double const m = std::abs(detail::deviate(c, truth, half_width_)), w = detail::deviate(h, 0.0, half_width_);
-    if (m + w >= 1.0 && m >= w) return log_tail(m - w);
-    if (m >= w) return detail::portable_log(2.0 * w * (1.0 - m));
-    return detail::portable_log(from_truth(w + m) + from_truth(w - m));
+  /// Areas of trapezia: one on either side of the truth, or 2h (1 - m) on one side.
+  [[nodiscard]] double log_within(cell const& c, double truth) const {
+    cell const z = detail::deviates(c, truth, half_width_);
+    if (z.lower < 0.0 && z.upper > 0.0) return detail::portable_log(from_truth(z.upper) + from_truth(-z.lower));
+    if (z.upper >= 1.0) return log_tail(z.lower);
+    if (z.lower <= -1.0) return log_tail(-z.upper);
+    return detail::portable_log(2.0 * z.half * (1.0 - std::abs(z.centre)));
   }
   [[nodiscard]] double fake(double truth, draws& d) const {
     detail::tail const t = detail::tail_from_word(d());

@@ -23,9 +23,10 @@ class uniform_instrument : public scalar_instrument<uniform_instrument> {
   }
   [[nodiscard]] double log_below(double x, double truth) const { return log_part(half_width_ + (x - truth)); }
   [[nodiscard]] double log_above(double x, double truth) const { return log_part(half_width_ - (x - truth)); }
-  [[nodiscard]] double log_around(double c, double h, double truth) const {
-    double const gap = c > truth ? c - truth : truth - c;
-    return log_part(std::min({half_width_ - gap + h, 2.0 * h, 2.0 * half_width_}));
+  [[nodiscard]] double log_within(cell const& c, double truth) const {
+    cell const away = c.from(truth);
+    if (away.upper <= half_width_ && -away.lower <= half_width_) return log_part(2.0 * c.half);
+    return log_part(std::min(away.upper, half_width_) + std::min(-away.lower, half_width_));
   }
   [[nodiscard]] double fake(double truth, draws& d) const {
     return d.uniform(truth - half_width_, truth + half_width_);

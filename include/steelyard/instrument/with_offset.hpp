@@ -50,20 +50,16 @@ class offset_instrument : public detail::gaussian<offset_instrument<Instrument>>
       double const true_value = admit(truth[i]), s = inner_.sd(true_value);
       if (!(s > 0.0))
         detail::refuse_truth(name(), true_value, "one at which the instrument has noise, to share an offset");
-      double const ratio = detail::deviate(offset_sd_, 0.0, s);
+      double const weight = 2.0 * detail::half_square(detail::deviate(offset_sd_, 0.0, s));
       sd[i] = s;
       away[i] = reading[i] - true_value;
-      whole += ratio * ratio;
-      pull += ratio * ratio * away[i];
+      whole += weight;
+      pull += weight * away[i];
       sum -= inner_.log_sd(true_value) + detail::half_log_two_pi;
     }
     double const offset = pull / whole;
-    double const z = detail::deviate(offset, 0.0, offset_sd_);
-    sum -= 0.5 * (detail::portable_log(whole) + z * z);
-    for (std::size_t i = 0; i < N; ++i) {
-      double const rest = detail::deviate(away[i], offset, sd[i]);
-      sum -= 0.5 * rest * rest;
-    }
+    sum -= 0.5 * detail::portable_log(whole) + detail::half_square(detail::deviate(offset, 0.0, offset_sd_));
+    for (std::size_t i = 0; i < N; ++i) sum -= detail::half_square(detail::deviate(away[i], offset, sd[i]));
     return log_likelihood{sum};
   }
 
@@ -112,8 +108,8 @@ class drawn_offset_instrument : public scalar_instrument<drawn_offset_instrument
   [[nodiscard]] double log_above(double x, displaced const& state) const {
     return inner_.log_above(x - state.offset, state.truth);
   }
-  [[nodiscard]] double log_around(double c, double h, displaced const& state) const {
-    return inner_.log_around(c - state.offset, h, state.truth);
+  [[nodiscard]] double log_within(cell const& c, displaced const& state) const {
+    return inner_.log_within(c.from(state.offset), state.truth);
   }
   [[nodiscard]] double fake(displaced const& state, draws& d) const {
     return inner_.fake(state.truth, d) + state.offset;

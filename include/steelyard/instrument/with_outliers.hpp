@@ -52,8 +52,8 @@ class outlier_instrument
   [[nodiscard]] double log_above(double x, truth_t const& truth) const {
     return mixed(usual_.log_above(x, truth), wide_.log_above(x, truth));
   }
-  [[nodiscard]] double log_around(double c, double h, truth_t const& truth) const {
-    return mixed(usual_.log_around(c, h, truth), wide_.log_around(c, h, truth));
+  [[nodiscard]] double log_within(cell const& c, truth_t const& truth) const {
+    return mixed(usual_.log_within(c, truth), wide_.log_within(c, truth));
   }
   [[nodiscard]] auto fake(truth_t const& truth, draws& d) const {
     return d.chance(share_) ? wide_.fake(truth, d) : usual_.fake(truth, d);
