@@ -2,11 +2,12 @@
 #pragma once
 
 #include <cstddef>
-#include <functional>
 #include <memory>
 #include <mutex>
 #include <utility>
 #include <vector>
+
+#include <steelyard/base/functional.hpp>
 
 namespace steelyard::inline v1 {
 

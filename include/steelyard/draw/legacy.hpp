@@ -3,10 +3,10 @@
 
 #include <cstddef>
 #include <cstdint>
-#include <functional>
 #include <type_traits>
 #include <utility>
 
+#include <steelyard/base/functional.hpp>
 #include <steelyard/draw/draws.hpp>
 #include <steelyard/draw/philox.hpp>
 
@@ -59,7 +59,7 @@ struct engine_sampler {
     std::uint64_t const second = source();
     seed_words seeds(first, second);
     Engine engine(seeds);
-    return std::invoke(f, engine);
+    return detail::call(f, engine);
   }
 };
 
@@ -68,7 +68,7 @@ template <class Function>
 struct seed_sampler {
   Function f;
 
-  decltype(auto) operator()(draws& source) const { return std::invoke(f, source()); }
+  decltype(auto) operator()(draws& source) const { return detail::call(f, source()); }
 };
 
 }  // namespace detail

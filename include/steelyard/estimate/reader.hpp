@@ -2,10 +2,10 @@
 #pragma once
 
 #include <cstddef>
-#include <functional>
 #include <tuple>
 #include <utility>
 
+#include <steelyard/base/functional.hpp>
 #include <steelyard/estimate/accumulation.hpp>
 #include <steelyard/estimate/estimator.hpp>
 #include <steelyard/weigh/callable.hpp>
@@ -51,7 +51,7 @@ class reader {
  private:
   template <class R>
   static void write(R const& r, State const& state, double*& first, std::size_t stride) {
-    auto&& answer = std::invoke(r, state);
+    auto&& answer = detail::call(r, state);
     using columns_here = readout_columns<std::remove_cvref_t<decltype(answer)>>;
     columns_here::write(answer, first, stride);
     first += columns_here::size * stride;

@@ -4,7 +4,6 @@
 #include <cstddef>
 #include <cstdint>
 #include <exception>
-#include <functional>
 #include <mutex>
 #include <new>
 #include <span>
@@ -13,6 +12,7 @@
 #include <vector>
 
 #include <steelyard/base/bits.hpp>
+#include <steelyard/base/functional.hpp>
 #include <steelyard/draw/draws.hpp>
 #include <steelyard/draw/first_words.hpp>
 #include <steelyard/draw/words.hpp>
@@ -65,7 +65,7 @@ class maker {
     char const* stage = "the sampler";
     bool made = false;
     try {
-      auto&& drawn = std::invoke(sampler_, draws_);
+      auto&& drawn = detail::call(sampler_, draws_);
       if constexpr (may_be_empty) {
         if (!drawn.has_value()) {
           if (terms_.on_failure == failures::set_aside) {

@@ -11,6 +11,7 @@
 #include <vector>
 
 #include <steelyard/base/algorithm.hpp>
+#include <steelyard/base/functional.hpp>
 #include <steelyard/run/front_door.hpp>
 #include <steelyard/run/keeping_run.hpp>
 #include <steelyard/run/one_pass.hpp>
@@ -132,12 +133,12 @@ class pipeline {
       detail::seat_on_sample(source, from, i);
       decltype(auto) call = detail::instance_of<Sampler>::make(sampler_);
       if constexpr (detail::unwrap_optional<detail::result_t<Sampler, draws&>>::may_be_empty) {
-        auto drawn = std::invoke(call, source);
+        auto drawn = detail::call(call, source);
         if (!drawn.has_value())
           throw failed_sample("replay: the sampler of sample " + std::to_string(i.value()) + " returned no state", i);
         return *std::move(drawn);
       } else {
-        return std::invoke(call, source);
+        return detail::call(call, source);
       }
     } else {
       throw error("pipeline: not usable");

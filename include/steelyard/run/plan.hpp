@@ -2,13 +2,13 @@
 #pragma once
 
 #include <cstdint>
-#include <functional>
 #include <memory>
 #include <stop_token>
 
 #include <steelyard/base/chrono.hpp>
 #include <steelyard/base/count.hpp>
 #include <steelyard/base/executor.hpp>
+#include <steelyard/base/functional.hpp>
 #include <steelyard/draw/words.hpp>
 #include <steelyard/run/checkpoint_sink.hpp>
 #include <steelyard/sample/origin.hpp>

@@ -4,13 +4,13 @@
 #include <atomic>
 #include <cstddef>
 #include <cstdint>
-#include <functional>
 #include <memory>
 #include <optional>
 #include <span>
 #include <utility>
 
 #include <steelyard/base/executor.hpp>
+#include <steelyard/base/functional.hpp>
 #include <steelyard/run/maker.hpp>
 #include <steelyard/sample/origin.hpp>
 #include <steelyard/sample/state_store.hpp>
@@ -58,7 +58,7 @@ class replay_store final : public state_store<state_of_t<Sampler>> {
   void play(player& own, std::uint64_t i, Act act) const {
     ++replays_;
     seat_on_sample(own.source, terms_, i);
-    auto&& drawn = call_user("the sampler", i, [&]() -> decltype(auto) { return std::invoke(own.call, own.source); });
+    auto&& drawn = call_user("the sampler", i, [&]() -> decltype(auto) { return detail::call(own.call, own.source); });
     if constexpr (unwrap_optional<result_t<Sampler, draws&>>::may_be_empty) {
       if (!drawn.has_value())
         throw located{i, std::make_exception_ptr(failed_sample(

@@ -4,7 +4,6 @@
 #include <cmath>
 #include <cstddef>
 #include <cstdint>
-#include <functional>
 #include <iterator>
 #include <memory>
 #include <span>
@@ -13,6 +12,7 @@
 #include <vector>
 
 #include <steelyard/base/algorithm.hpp>
+#include <steelyard/base/functional.hpp>
 #include <steelyard/estimate/bins.hpp>
 #include <steelyard/estimate/estimate.hpp>
 #include <steelyard/estimate/expectation.hpp>
@@ -237,7 +237,7 @@ class ensemble {
     std::vector<double> values(size());
     double mean = 0.0;
     for (std::size_t s = 0; s < size(); ++s) {
-      values[s] = static_cast<double>(std::invoke(readout, (*this)[s]));
+      values[s] = static_cast<double>(detail::call(readout, (*this)[s]));
       mean += (values[s] - mean) / static_cast<double>(s + 1);
     }
     double squares = 0.0, fourth = 0.0, weighted = 0.0, weighted_fourth = 0.0;

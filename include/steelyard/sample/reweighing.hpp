@@ -11,6 +11,7 @@
 
 #include <steelyard/base/algorithm.hpp>
 #include <steelyard/base/elementary.hpp>
+#include <steelyard/base/functional.hpp>
 #include <steelyard/base/text.hpp>
 #include <steelyard/estimate/user_code.hpp>
 #include <steelyard/sample/kept_worker.hpp>
@@ -157,7 +158,7 @@ std::vector<double> read_states(state_store<X> const& states, sample_columns con
       states, origin, values.size(), readout,
       [&](std::size_t i) { return everywhere || columns.log_weights[i] > impossible; },
       [&](auto const& own, std::size_t i, X const& state) {
-        call_user("a readout", origin.sample_of(i), [&] { values[i] = static_cast<double>(std::invoke(own, state)); });
+        call_user("a readout", origin.sample_of(i), [&] { values[i] = static_cast<double>(detail::call(own, state)); });
       });
   return values;
 }

@@ -3,7 +3,6 @@
 
 #include <cstddef>
 #include <cstdint>
-#include <functional>
 #include <memory>
 #include <new>
 #include <span>
@@ -12,6 +11,7 @@
 #include <vector>
 
 #include <steelyard/base/error.hpp>
+#include <steelyard/base/functional.hpp>
 
 namespace steelyard::inline v1::detail {
 

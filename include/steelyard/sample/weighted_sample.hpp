@@ -3,7 +3,6 @@
 
 #include <cstddef>
 #include <cstdint>
-#include <functional>
 #include <memory>
 #include <span>
 #include <string>
@@ -13,6 +12,7 @@
 #include <utility>
 #include <vector>
 
+#include <steelyard/base/functional.hpp>
 #include <steelyard/estimate/answers.hpp>
 #include <steelyard/estimate/difference.hpp>
 #include <steelyard/estimate/expectation.hpp>
@@ -63,14 +63,14 @@ class weighted_sample {
   auto with_state(std::size_t i, F&& f) const -> std::invoke_result_t<F&, X const&> {
     refuse_past_end("with_state", i);
     using result = std::invoke_result_t<F&, X const&>;
-    if (states_->data() != nullptr) return std::invoke(f, states_->data()[i]);
+    if (states_->data() != nullptr) return detail::call(f, states_->data()[i]);
     if constexpr (std::is_void_v<result>) {
-      detail::unlocated([&] { states_->visit(std::span(&i, 1), [&](std::size_t, X const& x) { std::invoke(f, x); }); });
+      detail::unlocated([&] { states_->visit(std::span(&i, 1), [&](std::size_t, X const& x) { detail::call(f, x); }); });
     } else {
       static_assert(!std::is_reference_v<result>, "steelyard: with_state() must return a value: the state may not last");
       std::vector<result> answer;
       detail::unlocated(
-          [&] { states_->visit(std::span(&i, 1), [&](std::size_t, X const& x) { answer.push_back(std::invoke(f, x)); }); });
+          [&] { states_->visit(std::span(&i, 1), [&](std::size_t, X const& x) { answer.push_back(detail::call(f, x)); }); });
       return std::move(answer.front());
     }
   }

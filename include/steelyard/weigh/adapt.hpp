@@ -1,7 +1,6 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
-#include <functional>
 #include <string>
 #include <string_view>
 #include <type_traits>
@@ -9,6 +8,7 @@
 
 #include <steelyard/base/bits.hpp>
 #include <steelyard/base/error.hpp>
+#include <steelyard/base/functional.hpp>
 #include <steelyard/weigh/itemised.hpp>
 
 namespace steelyard::inline v1 {
@@ -24,7 +24,7 @@ class on_scale {
   template <class State>
     requires std::is_convertible_v<std::invoke_result_t<F const&, State const&>, double>
   Scale operator()(State const& state) const {
-    return Scale{static_cast<double>(std::invoke(f_, state))};
+    return Scale{static_cast<double>(detail::call(f_, state))};
   }
   [[nodiscard]] auto worker_instance() const
     requires per_worker_callable<F>
@@ -73,7 +73,7 @@ class bounded {
   template <class State>
     requires detail::callable_v<Weighter, State const&>
   log_likelihood operator()(State const& state) const {
-    double const score = detail::to_log(std::invoke(weighter_, state));
+    double const score = detail::to_log(detail::call(weighter_, state));
     double const size = log_bound_ < 0.0 ? -log_bound_ : log_bound_;
     if (score > log_bound_ + 1e-12 * (1.0 + size))
       throw bad_weight("bounded: a log-likelihood of " + std::to_string(score) + " exceeds the declared bound " +

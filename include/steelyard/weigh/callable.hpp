@@ -1,9 +1,10 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
-#include <functional>
 #include <type_traits>
 #include <utility>
+
+#include <steelyard/base/functional.hpp>
 
 namespace steelyard::inline v1 {
 
@@ -19,7 +20,7 @@ class own_copy {
   template <class... Args>
     requires std::is_invocable_v<F&, Args...>
   decltype(auto) operator()(Args&&... args) const {
-    return std::invoke(f_, std::forward<Args>(args)...);
+    return detail::call(f_, std::forward<Args>(args)...);
   }
 
  private:

@@ -2,7 +2,6 @@
 #pragma once
 
 #include <cstddef>
-#include <functional>
 #include <span>
 #include <string>
 #include <string_view>
@@ -12,6 +11,7 @@
 #include <steelyard/base/bits.hpp>
 #include <steelyard/base/elementary.hpp>
 #include <steelyard/base/error.hpp>
+#include <steelyard/base/functional.hpp>
 #include <steelyard/base/lanes.hpp>
 #include <steelyard/weigh/concepts.hpp>
 
@@ -72,7 +72,7 @@ void score_items(Instance const& weighter, State const& state, std::span<double>
     weighter.scores(state, out);
     for (double& score : out) score = checked_log(score);
   } else {
-    out[0] = to_log(std::invoke(weighter, state));
+    out[0] = to_log(detail::call(weighter, state));
   }
 }
 

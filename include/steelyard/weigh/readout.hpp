@@ -1,12 +1,12 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
-#include <functional>
 #include <string>
 #include <string_view>
 #include <type_traits>
 #include <utility>
 
+#include <steelyard/base/functional.hpp>
 #include <steelyard/weigh/callable.hpp>
 
 namespace steelyard::inline v1 {
@@ -24,7 +24,7 @@ class readout {
   template <class State>
     requires std::is_invocable_v<F const&, State const&>
   decltype(auto) operator()(State const& state) const {
-    return std::invoke(f_, state);
+    return detail::call(f_, state);
   }
 
   [[nodiscard]] auto worker_instance() const

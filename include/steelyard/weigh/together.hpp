@@ -3,7 +3,6 @@
 
 #include <array>
 #include <cstddef>
-#include <functional>
 #include <span>
 #include <string>
 #include <string_view>
@@ -12,6 +11,7 @@
 #include <utility>
 
 #include <steelyard/base/error.hpp>
+#include <steelyard/base/functional.hpp>
 #include <steelyard/weigh/itemised.hpp>
 
 namespace steelyard::inline v1 {
@@ -27,7 +27,7 @@ class named {
   template <class State>
     requires detail::callable_v<Weighter, State const&>
   auto operator()(State const& state) const {
-    return std::invoke(weighter_, state);
+    return detail::call(weighter_, state);
   }
   [[nodiscard]] double log_bound() const
     requires detail::bounded_weighter<Weighter>
