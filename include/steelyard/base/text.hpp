@@ -34,6 +34,7 @@ inline std::string short_number(double value) {
 /// "0.30786 +- 0.00044": both rounded to two digits of the standard error.
 inline std::string rounded_to_error(double value, double error) {
   if (!is_finite(value) || !is_finite(error) || !(error > 0.0)) return plain_number(value) + " +- " + plain_number(error);
+  if (value == 0.0) return "0 +- " + number_with(error, std::chars_format::general, 2);
   std::string const digits = number_with(error, std::chars_format::scientific, 1);
   int exponent = 0;
   std::from_chars(digits.data() + digits.find('e') + (digits[digits.find('e') + 1] == '+' ? 2 : 1),
