@@ -37,12 +37,19 @@ struct resample_options {
 namespace detail {
 
 /// Random order, each as likely.                               [Fisher & Yates 1938; Durstenfeld 1964]
+template <class Swap>
+void shuffle(std::size_t n, draws& source, Swap swap) {
+  for (std::size_t i = n; i > 1; --i) swap(i - 1, static_cast<std::size_t>(source.index(i)));
+}
+template <class T>
+void shuffle(std::vector<T>& all, draws& source) {
+  shuffle(all.size(), source, [&](std::size_t i, std::size_t j) { std::swap(all[i], all[j]); });
+}
 inline void shuffle(drawn_slots& slots, draws& source) {
-  for (std::size_t i = slots.positions.size(); i > 1; --i) {
-    auto const j = static_cast<std::size_t>(source.index(i));
-    std::swap(slots.positions[i - 1], slots.positions[j]);
-    if (!slots.weights.empty()) std::swap(slots.weights[i - 1], slots.weights[j]);
-  }
+  shuffle(slots.positions.size(), source, [&](std::size_t i, std::size_t j) {
+    std::swap(slots.positions[i], slots.positions[j]);
+    if (!slots.weights.empty()) std::swap(slots.weights[i], slots.weights[j]);
+  });
 }
 
 /// Slots as positions in rising order, and what each weighs where they are not equal.
