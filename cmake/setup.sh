@@ -5,7 +5,11 @@
 #
 #   steelyard_setup core|tests     needs for the examples, or for the tests as well
 #   steelyard_generator            sets the array generator to CMake's -G, Ninja where there is one
-#   $CXX                           the compiler, if another than the first of c++, g++, clang++ is wanted
+#   $root                          given: the project's folder
+#   $CXX                           the compiler, if another than the first of g++, c++, clang++ is wanted
+
+# Where there is a ccache, let it know the files of another copy of this tree again.
+export CCACHE_BASEDIR=${CCACHE_BASEDIR-$root} CCACHE_NOHASHDIR=${CCACHE_NOHASHDIR-1}
 
 say() { printf '%s\n' "$*"; }
 step() { printf '\n== %s\n' "$*"; }
