@@ -20,8 +20,16 @@ template <std::size_t N>
 class estimates;
 struct interval;
 class histogram_result;
+class histogram_2d_result;
+class mode_result;
 class quantile_result;
 struct interval_result;
+struct shortest_interval_result;
+class cumulative_result;
+struct moments_result;
+class correlation_result;
+template <std::size_t N>
+class covariance_result;
 class diagnosis;
 enum class verdict;
 template <class... As>
@@ -31,6 +39,8 @@ template <class X>
 class weighted_sample;
 template <class X>
 class ensemble;
+template <class X>
+class picker;
 
 struct plan;
 class executor;

@@ -107,6 +107,30 @@ class pipeline {
     return one(how, steelyard::ratio(std::move(top), std::move(bottom)));
   }
   auto log_evidence(plan const& how) const { return one(how, steelyard::log_evidence()); }
+  template <class Readout>
+  auto moments(plan const& how, Readout readout) const {
+    return one(how, steelyard::moments(std::move(readout)));
+  }
+  template <class First, class Second>
+  auto correlation(plan const& how, First first, Second second) const {
+    return one(how, steelyard::correlation(std::move(first), std::move(second)));
+  }
+  template <class Readout>
+  auto covariance(plan const& how, Readout readout) const {
+    return one(how, steelyard::covariance(std::move(readout)));
+  }
+  template <class Readout>
+  auto cumulative(plan const& how, Readout readout, std::vector<double> points) const {
+    return one(how, steelyard::cumulative(std::move(readout), std::move(points)));
+  }
+  template <class Readout, class Edges = automatic_bins_t>
+  auto mode(plan const& how, Readout readout, Edges edges = {}) const {
+    return one(how, steelyard::mode(std::move(readout), std::move(edges)));
+  }
+  template <class First, class Second, class XEdges = automatic_bins_t, class YEdges = automatic_bins_t>
+  auto histogram_2d(plan const& how, First first, Second second, XEdges x = {}, YEdges y = {}) const {
+    return one(how, steelyard::histogram_2d(std::move(first), std::move(second), std::move(x), std::move(y)));
+  }
 
   /// k states in proportion to their weights, in one pass: their streams are kept, and the states made again.
   ensemble<state_type> resample(plan const& how, count k) const {

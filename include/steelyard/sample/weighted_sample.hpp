@@ -14,13 +14,20 @@
 
 #include <steelyard/base/functional.hpp>
 #include <steelyard/estimate/answers.hpp>
+#include <steelyard/estimate/correlation.hpp>
+#include <steelyard/estimate/covariance.hpp>
+#include <steelyard/estimate/cumulative.hpp>
 #include <steelyard/estimate/difference.hpp>
 #include <steelyard/estimate/expectation.hpp>
 #include <steelyard/estimate/histogram.hpp>
+#include <steelyard/estimate/histogram_2d.hpp>
 #include <steelyard/estimate/log_evidence.hpp>
+#include <steelyard/estimate/mode.hpp>
+#include <steelyard/estimate/moments.hpp>
 #include <steelyard/estimate/probability.hpp>
 #include <steelyard/estimate/quantile.hpp>
 #include <steelyard/estimate/ratio.hpp>
+#include <steelyard/estimate/shortest_interval.hpp>
 #include <steelyard/estimate/sweep.hpp>
 #include <steelyard/sample/ensemble.hpp>
 #include <steelyard/sample/front_door.hpp>
@@ -166,6 +173,42 @@ class weighted_sample {
     return one(steelyard::ratio(std::move(top), std::move(bottom)));
   }
   steelyard::estimate log_evidence() const { return one(steelyard::log_evidence()); }
+  /// Mean, sd, skewness and kurtosis.
+  template <class Readout>
+  auto moments(Readout readout) const {
+    return one(steelyard::moments(std::move(readout)));
+  }
+  template <class First, class Second>
+  auto correlation(First first, Second second) const {
+    return one(steelyard::correlation(std::move(first), std::move(second)));
+  }
+  template <class Readout>
+  auto covariance(Readout readout) const {
+    return one(steelyard::covariance(std::move(readout)));
+  }
+  /// The shortest interval that holds this share; `interval` is the equal-tailed one.
+  template <class Readout>
+  auto shortest_interval(Readout readout, double level) const {
+    return one(steelyard::shortest_interval(std::move(readout), level));
+  }
+  /// The distribution function: as a step function, or at chosen points.
+  template <class Readout>
+  auto cumulative(Readout readout) const {
+    return one(steelyard::cumulative(std::move(readout)));
+  }
+  template <class Readout>
+  auto cumulative(Readout readout, std::vector<double> points) const {
+    return one(steelyard::cumulative(std::move(readout), std::move(points)));
+  }
+  /// The bin of highest density.
+  template <class Readout, class Edges = automatic_bins_t>
+  auto mode(Readout readout, Edges edges = {}) const {
+    return one(steelyard::mode(std::move(readout), std::move(edges)));
+  }
+  template <class First, class Second, class XEdges = automatic_bins_t, class YEdges = automatic_bins_t>
+  auto histogram_2d(First first, Second second, XEdges x = {}, YEdges y = {}) const {
+    return one(steelyard::histogram_2d(std::move(first), std::move(second), std::move(x), std::move(y)));
+  }
 
   [[nodiscard]] steelyard::diagnosis const& diagnosis() const noexcept { return *health_; }
 
