@@ -97,7 +97,8 @@ inline reference by_quadrature(readings const& read, std::vector<double> const& 
           double const down = gradient(demand), up = gradient(demand + q);
           double const slope = (gradient(demand + q + 1e-3) - gradient(demand + q - 1e-3)) / 2e-3;
           double const weight = q_weight * meter * roughness_weight * demand_weight / (log_range * length);
-          for (auto const& [x, x_weight] : positions) {
+          for (auto const& node : positions) {
+            double const x = node.first, x_weight = node.second;
             auto const lost = [&](double at) { return at < x ? up * at : up * x + down * (at - x); };
             double const a = read.logger_1.value + lost(x1) - set_inlet_pressure;
             double const b = read.logger_2.value + lost(x2) - set_inlet_pressure;
