@@ -70,6 +70,8 @@ static_assert(sy::sampler<decltype(generic)>);
 static_assert(sy::sampler<decltype(of_array)>);
 static_assert(sy::sampler<decltype(per_worker)>);
 static_assert(sy::sampler<solver>);
+static_assert(sy::sampler<tank const& (*)(sy::draws&)>);
+static_assert(sy::sampler<std::optional<huge_state> (*)(sy::draws&)>);
 static_assert(sy::sampler<decltype(&plain_sampler)>);
 static_assert(sy::sampler<std::function<double(sy::draws&)>>);
 static_assert(std::is_same_v<sy::state_of_t<decltype(may_fail)>, tank>);
@@ -82,6 +84,7 @@ static_assert(!sy::sampler<decltype(takes_a_copy)>);
 static_assert(!sy::sampler<decltype(takes_an_engine)>);
 static_assert(!sy::sampler<decltype(takes_two)>);
 static_assert(!sy::sampler<double>);
+static_assert(!sy::sampler<huge_state& (*)(sy::draws&)>);
 static_assert(!sy::sampler<fixed_in_place (*)(sy::draws&)>);
 
 // --- weighters

@@ -23,7 +23,8 @@ consteval bool may_pipe() {
                                      "returns a state; this one cannot be called so");
     return false;
   } else if constexpr (!sampler<Sampler>) {
-    static_assert(!Speak || sampler<Sampler>, "steelyard: this sampler returns nothing that can be moved; it must return a state");
+    static_assert(!Speak || sampler<Sampler>, "steelyard: this sampler returns nothing that can be moved, or a reference to "
+                                              "what cannot be copied; it must return a state");
     return false;
   } else {
     using X = state_of_t<Sampler>;

@@ -76,10 +76,10 @@ class maker {
                                "the sampler of sample " + std::to_string(i) + " failed: it returned no state", i))};
         }
         made = true;
-        weigh(i, *drawn, stage, take);
+        weigh(i, *std::forward<decltype(drawn)>(drawn), stage, take);
       } else {
         made = true;
-        weigh(i, drawn, stage, take);
+        weigh(i, std::forward<decltype(drawn)>(drawn), stage, take);
       }
     } catch (std::bad_alloc const&) {
       throw_located(stage, i);

@@ -145,7 +145,7 @@ class keeping_worker {
     if (making_t::items > 1) part.scores.resize(making_t::items);
     make_block(maker_, shared_, index, [&](std::uint64_t i, auto&& x, double log_weight, std::span<double const> scores) {
       if (i < from) return;
-      if (keep_states) part.states.emplace_back(std::move(x));
+      if (keep_states) part.states.emplace_back(std::forward<decltype(x)>(x));
       part.log_weights.push_back(log_weight);
       for (std::size_t k = 0; k < part.scores.size(); ++k) part.scores[k].push_back(scores[k]);
       part.samples.push_back(i);

@@ -9,6 +9,7 @@
 #include <string_view>
 #include <tuple>
 #include <type_traits>
+#include <utility>
 
 #include <steelyard/draw/draws.hpp>
 #include <steelyard/weigh/callable.hpp>
@@ -60,11 +61,24 @@ struct readout_columns<std::array<T, N>> {
 template <class Sampler>
 using state_of_t = typename detail::unwrap_optional<detail::result_t<Sampler, draws&>>::type;
 
+namespace detail {
+
+/// Whether a state can be made of what a sampler returns; what it returns by reference is copied.
+template <class F, class Drawn = std::invoke_result_t<called_t<F>, draws&>>
+consteval bool hands_over() {
+  if constexpr (unwrap_optional<std::remove_cvref_t<Drawn>>::may_be_empty)
+    return std::is_constructible_v<state_of_t<F>, decltype(*std::declval<Drawn>())>;
+  else
+    return std::is_constructible_v<state_of_t<F>, Drawn>;
+}
+
+}  // namespace detail
+
 /// The user's generator: called as `const` with `draws&`, returns a movable
 /// state, or `std::optional` of one where a run may fail.
 template <class F>
 concept sampler = detail::callable_v<F, draws&> && !std::is_void_v<state_of_t<F>> &&
-                  std::move_constructible<state_of_t<F>>;
+                  std::move_constructible<state_of_t<F>> && detail::hands_over<F>();
 
 /// A weighter of several named readings: `size`, `name(i)` and
 /// `scores(state, span)` with one log-likelihood each.
