@@ -60,6 +60,7 @@ void keeping_run(Sampler const& draw, Weighter const& weigh_with, plan const& ho
   checkpoint_keeper keeper(how, 2, shape);
   std::uint64_t first = from / block_size;
   if (from == 0) first = keeper.take_up(shared, [&](byte_reader& in) { load_part(in, part, keep_states); });
+  if (from > 0) check_extension(pool.take()->making(), shared, origin, part.samples, part.log_weights);
   if (how.time_limit.count() == 0 && !how.token.stop_possible()) {
     if (keep_states) part.states.reserve(static_cast<std::size_t>(how.size.value()));
     part.log_weights.reserve(static_cast<std::size_t>(how.size.value()));

@@ -55,8 +55,10 @@ std::string shape_of(Weighter const& weighter) {
 }
 
 /// Draws, weighs and answers block by block; no state is kept.
+/// @param made_again  states will be made again later, so that a sampler that keeps something is an error
 template <class Sampler, class Weighter, class... Es>
-auto one_pass(Sampler const& draw, Weighter const& weigh_with, plan const& how, std::tuple<Es...> const& bound) {
+auto one_pass(Sampler const& draw, Weighter const& weigh_with, plan const& how, std::tuple<Es...> const& bound,
+              bool made_again = false) {
   using state = state_of_t<Sampler>;
   using worker = run_worker<Sampler, Weighter, Es...>;
   sample_origin origin;
@@ -93,7 +95,7 @@ auto one_pass(Sampler const& draw, Weighter const& weigh_with, plan const& how, 
   origin.findings = turns.findings();
   {
     auto const own = pool.take();
-    check_replay(own->making(), shared, origin, false);
+    check_replay(own->making(), shared, origin, made_again);
   }
   auto const merged = all.finish();
   weight_totals const& totals = merged->totals;

@@ -57,10 +57,11 @@ class pipeline {
   /// copied when they can be, and made again otherwise.
   weighted_sample<state_type> extend(weighted_sample<state_type> sample, count more) const {
     if constexpr (fits) {
-      if (sample.origin()->how == how_drawn::labelled || !sample.origin()->counts.empty())
+      if (!sample.origin()->from_run)
         throw bad_argument("extend: this sample was not drawn by a pipeline; weigh the longer ensemble instead");
       auto origin = std::make_shared<detail::sample_origin>(*sample.origin());
-      origin->findings.clear();
+      std::erase_if(origin->findings, [](finding const& each) { return each.kind != finding_kind::hidden_state; });
+      origin->calls = sample.sampler_calls();
       plan how;
       how.size = origin->drawn + more;
       how.seed = origin->seed;
@@ -69,7 +70,7 @@ class pipeline {
       how.executor = origin->execute;
       how.keep = sample.store()->data() != nullptr ? keeping::states : keeping::streams;
       detail::refuse_size(how);
-      detail::kept_part<state_type> part = taken_apart(std::move(sample), how);
+      detail::kept_part<state_type> part = taken_apart(std::move(sample), how, origin->calls);
       std::uint64_t const from = origin->drawn;
       detail::keeping_run(sampler_, weighter_, how, from, *origin, part);
       return assemble(std::move(origin), std::move(part), how.keep);
@@ -136,7 +137,8 @@ class pipeline {
   ensemble<state_type> resample(plan const& how, count k) const {
     if constexpr (fits) {
       if (k == 0u) throw bad_argument("resample: 0 states were asked for; at least one is allowed");
-      auto const answers = pass(how, std::tuple(detail::slots_estimator(static_cast<std::size_t>(k.value()), how.seed)));
+      std::tuple const slots_of(detail::slots_estimator(static_cast<std::size_t>(k.value()), how.seed));
+      auto const answers = detail::one_pass(sampler_, weighter_, how, slots_of, true);
       detail::slots_result const& slots = answers.template get<0>();
       std::vector<std::size_t> const samples(slots.samples.begin(), slots.samples.end());
       auto replays = std::make_shared<detail::replay_store<Sampler> const>(sampler_, detail::terms_of(how),
@@ -199,7 +201,7 @@ class pipeline {
   }
 
   /// The columns of a sample and its states, to be added to.
-  detail::kept_part<state_type> taken_apart(weighted_sample<state_type> sample, plan const& how) const {
+  detail::kept_part<state_type> taken_apart(weighted_sample<state_type> sample, plan const& how, std::uint64_t& calls) const {
     using array = detail::state_array<state_type>;
     detail::kept_part<state_type> part;
     detail::sample_columns const& columns = sample.columns();
@@ -224,6 +226,7 @@ class pipeline {
       for (std::size_t i = 0; i < size; ++i) part.states.emplace_back(shared->data()[i]);
     } else {
       for (std::uint64_t const i : part.samples) part.states.emplace_back(replay(how, i));
+      calls += part.samples.size();
     }
     return part;
   }

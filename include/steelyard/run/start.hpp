@@ -3,8 +3,10 @@
 
 #include <cstddef>
 #include <cstdint>
+#include <span>
 #include <string>
 
+#include <steelyard/base/algorithm.hpp>
 #include <steelyard/run/maker.hpp>
 #include <steelyard/run/plan.hpp>
 #include <steelyard/run/run_worker.hpp>
@@ -26,6 +28,7 @@ inline void refuse_size(plan const& how) {
 /// Notes in `origin` how the plan draws.
 inline void start_run(sample_origin& origin, plan const& how) {
   refuse_size(how);
+  origin.from_run = true;
   origin.seed = how.seed;
   origin.source = how.source;
   origin.on_failure = how.on_failure;
@@ -46,6 +49,24 @@ void check_replay(Maker& making, run_shared const& shared, sample_origin& origin
   if (agree) return;
   if (must_agree) throw hidden_state("run: " + hidden_state_text(differs));
   origin.findings.push_back({finding_kind::hidden_state, hidden_state_text(differs)});
+}
+
+/// Looks again at a few samples of a run that is to be extended.
+/// @throws bad_argument where one differs, unless its run found hidden state itself.
+template <class Maker>
+void check_extension(Maker& making, run_shared const& shared, sample_origin& origin, std::span<std::uint64_t const> samples,
+                     std::span<double const> log_weights) {
+  for (finding const& each : origin.findings)
+    if (each.kind == finding_kind::hidden_state) return;
+  for (std::uint64_t const i : shared.probed) {
+    auto const at = std::lower_bound(samples.begin(), samples.end(), i);
+    if (at == samples.end() || *at != i) continue;
+    ++origin.calls;
+    if (making.look(i).bits != opaque_bits(log_weights[static_cast<std::size_t>(at - samples.begin())]))
+      throw bad_argument("extend: sample " + std::to_string(i) +
+                         " comes out differently under this pipeline; extend a sample with the pipeline that drew it, before "
+                         "reweighing");
+  }
 }
 
 }  // namespace steelyard::inline v1::detail

@@ -36,6 +36,7 @@ namespace detail {
 
 /// How the samples of a weighted sample came about, and what no reweighing changes.
 struct sample_origin {
+  bool from_run = false;  ///< drawn by a pipeline, and so to be extended by it
   std::uint64_t seed = 0;
   words source;
   failures on_failure = failures::stop;
