@@ -92,6 +92,7 @@ void keeping_run(Sampler const& draw, Weighter const& weigh_with, plan const& ho
   origin.calls += all.drawn() - std::min(all.drawn(), first * block_size);
   origin.failed = all.drawn() - part.samples.size();
   origin.findings.insert(origin.findings.end(), all.findings().begin(), all.findings().end());
+  note_doubts(origin, weigh_with);
   if (from == 0) {
     auto const own = pool.take();
     check_replay(own->making(), shared, origin, !keep_states);

@@ -93,6 +93,7 @@ auto one_pass(Sampler const& draw, Weighter const& weigh_with, plan const& how, 
   settle(turns.drawn());
   origin.calls = origin.drawn - std::min(origin.drawn, first * block_size);
   origin.findings = turns.findings();
+  note_doubts(origin, weigh_with);
   {
     auto const own = pool.take();
     check_replay(own->making(), shared, origin, made_again);

@@ -16,6 +16,7 @@
 #include <steelyard/estimate/accumulation.hpp>
 #include <steelyard/estimate/diagnosis.hpp>
 #include <steelyard/estimate/run_facts.hpp>
+#include <steelyard/weigh/together.hpp>
 #include <steelyard/estimate/tail_index.hpp>
 
 namespace steelyard::inline v1 {
@@ -118,6 +119,14 @@ struct sample_origin {
 /// sums may have no variance: less than the half that the run itself allows a rung.
 inline bool far_from_drawn(weight_totals const& totals, sample_origin const& origin) noexcept {
   return origin.how == how_drawn::lineages && totals.effective_size() < 0.5 * (totals.samples - totals.zeros);
+}
+
+/// Findings for what the readings in a weighter have to say against themselves.
+template <class Weighter>
+void note_doubts(sample_origin& origin, Weighter const& weighter) {
+  std::vector<std::string> doubts;
+  collect_doubts(weighter, doubts);
+  for (std::string& each : doubts) origin.findings.push_back({finding_kind::reading_doubt, std::move(each)});
 }
 
 /// Facts for the answers, from what a run's weights added up to.

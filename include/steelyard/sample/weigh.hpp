@@ -95,6 +95,7 @@ weighted_sample<X> weigh_states(Holder states, std::size_t size, Weighter const&
   if (!options.counts.empty()) origin->take_counts(std::move(options.counts));
   origin->take_labels(options.groups);
   origin->how = options.groups.empty() ? how_drawn::independent : how_drawn::labelled;
+  note_doubts(*origin, weighter);
   auto store = std::make_shared<kept_states<X, Holder> const>(std::move(states));
   sample_columns scored = score_states<X>(*store, prior, *origin, weighter);
   return weighted_sample<X>(std::move(store), std::move(scored), std::move(origin), "weigh");

@@ -9,6 +9,7 @@
 #include <tuple>
 #include <type_traits>
 #include <utility>
+#include <vector>
 
 #include <steelyard/base/error.hpp>
 #include <steelyard/base/functional.hpp>
@@ -119,5 +120,20 @@ class together {
   std::tuple<Weighters...> weighters_;
   std::array<std::string, size> names_;
 };
+
+namespace detail {
+
+/// What the readings in a weighter have to say against themselves, a sentence each.
+template <class Weighter>
+void collect_doubts(Weighter const& weighter, std::vector<std::string>& doubts) {
+  if constexpr (requires { weighter.doubts(); }) {
+    std::string sentence = weighter.doubts();
+    if (!sentence.empty()) doubts.push_back(std::move(sentence));
+  } else if constexpr (requires { weighter.parts(); }) {
+    std::apply([&](auto const&... part) { (collect_doubts(part, doubts), ...); }, weighter.parts());
+  }
+}
+
+}  // namespace detail
 
 }  // namespace steelyard::inline v1
