@@ -1,6 +1,6 @@
 # SPDX-License-Identifier: BSL-1.0
-# The first ```cpp block of the README is first.cpp without its licence line, and the first ```text block behind it is what
-# that program prints.
+# The first ```cpp block of the README is first.cpp without its licence line, and the first ```text block behind it is
+# what that program prints.
 # Given: README, SOURCE, PROGRAM, EXACT (whether the output must agree to the digit).
 cmake_policy(VERSION 3.22)
 file(READ "${README}" readme)

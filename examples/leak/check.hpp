@@ -1,7 +1,8 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
-// Whether the answer is right: beside a quadrature of the same posterior, and beside the true state of the invented case.
+// Whether the answer is right: beside a quadrature of the same posterior, and beside the true state of the invented
+// case.
 
 #include <array>
 #include <charconv>
@@ -29,7 +30,8 @@ inline state true_state(csv_file const& file) {
         found = std::from_chars(begin, each.data() + each.size(), values[i]).ec == std::errc();
       }
     if (!found)
-      throw bad_file(file.path() + ": its comments do not tell the true " + std::string(names[i]) + ", which --check needs");
+      throw bad_file(file.path() + ": its comments do not tell the true " + std::string(names[i]) +
+                     ", which --check needs");
   }
   return settle(values[0], values[1], values[2], values[3], values[4]);
 }
@@ -68,8 +70,8 @@ bool check(Sample const& sample, readings const& read, csv_file const& file, std
     sy::interval const most = sample.interval(readout, 0.999);
     if (value < most.lower || value > most.upper) {
       fits = false;
-      out << "Check failed: the true " << what << " is " << value << ", outside the 99.9 % interval " << most.lower << " to "
-          << most.upper << ".\n";
+      out << "Check failed: the true " << what << " is " << value << ", outside the 99.9 % interval " << most.lower
+          << " to " << most.upper << ".\n";
     }
   };
   covers("position", &state::position, truth.position);
@@ -79,8 +81,10 @@ bool check(Sample const& sample, readings const& read, csv_file const& file, std
   covers("demand", &state::demand, truth.demand);
   covers("inlet pressure", &state::inlet_pressure, truth.inlet_pressure);
   if (fits)
-    out << wrapped("Check passed: every answer agrees with a quadrature of the same posterior within its error bar, and the true "
-                   "leak (" + fixed(truth.leak_flow, 2) + " L/s at " + fixed(truth.position, 0) + " m) lies inside the intervals.");
+    out << wrapped(
+        "Check passed: every answer agrees with a quadrature of the same posterior within its error bar, and the true "
+        "leak (" +
+        fixed(truth.leak_flow, 2) + " L/s at " + fixed(truth.position, 0) + " m) lies inside the intervals.");
   return fits;
 }
 

@@ -55,9 +55,8 @@ class csv_file {
         continue;
       }
       if (fields.size() != header_.size())
-        throw bad_file(at(line) + (fields.size() == 1 ? "there is 1 field" : "there are " + std::to_string(fields.size()) + " fields") +
-                       " where the header names " + std::to_string(header_.size()) +
-                       " columns (a number takes a decimal point, not a comma)");
+        throw bad_file(at(line) + "fields in this row: " + std::to_string(fields.size()) + ", columns in the header: " +
+                       std::to_string(header_.size()) + " (a number takes a decimal point, not a comma)");
       rows_.push_back({line, std::move(fields)});
     }
     if (in.bad()) throw bad_file(path_ + ": it could not be read to its end");
@@ -121,7 +120,8 @@ class csv_file {
             break;
         }
         i = std::min(text.find_first_not_of(" \t", i + 1), text.size());
-        if (i < text.size() && text[i] != ',') throw bad_file(at(line) + "something stands behind a closed quotation mark");
+        if (i < text.size() && text[i] != ',')
+          throw bad_file(at(line) + "something stands behind a closed quotation mark");
         fields.push_back(std::move(field));
       } else {
         i = std::min(text.find(',', first), text.size());

@@ -62,14 +62,15 @@ struct steady_flow {
 
 /// The flow that fits: what leaves depends on the pressure at the leak, and that on what flows to it. With q leaking, Q
 /// delivered, h the pressure lost before the leak and p that at it, q - orifice(p) rises with q at a rate of about
-/// 1 + q h / ((Q + q) p); Newton's steps with that rate, kept between the flows already known to be too small and too large,
-/// until a step is below 1e-12 of the flow.
+/// 1 + q h / ((Q + q) p); Newton's steps with that rate, kept between the flows already known to be too small and too
+/// large, until a step is below 1e-12 of the flow.
 /// @throws std::domain_error where friction uses up the inlet pressure before the leak even if nothing leaks
 inline steady_flow solve(pipe const& along, fluid const& water, double inlet_pressure, double demand, double position,
                          double opening) {
   double const downstream = pressure_gradient(demand, along, water);
   if (!(inlet_pressure - downstream * position > 0.0))
-    throw std::domain_error("solve: the inlet pressure is used up by friction before the leak; it cannot drive this demand");
+    throw std::domain_error(
+        "solve: the inlet pressure is used up by friction before the leak; it cannot drive this demand");
   double too_small = 0.0, too_large = orifice_flow(opening, inlet_pressure, water), leak_flow = too_large;
   for (int round = 0; round < 200; ++round) {
     double const upstream = pressure_gradient(demand + leak_flow, along, water), lost = upstream * position;

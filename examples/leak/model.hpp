@@ -19,21 +19,21 @@ inline constexpr double inside_diameter = 0.1325;  // m: steel 139.7 x 3.6 mm, D
 inline constexpr double section = 100.0;           // m, what one crew digs up in a day
 
 // Before any reading.
-inline constexpr double smallest_opening = 0.3, largest_opening = 3.0;       // cm2, even on a logarithmic scale
-inline constexpr double median_roughness = 0.1, log_roughness_sd = 0.30;     // mm, lognormal: steel some decades in use
-inline constexpr double usual_demand = 15.0, demand_sd = 0.4;                // L/s, normal: the consumers' own meters
-inline constexpr double set_inlet_pressure = 620.0, inlet_pressure_sd = 1.5;  // kPa above the air's, normal: held by a pump
+inline constexpr double smallest_opening = 0.3, largest_opening = 3.0;    // cm2, even on a logarithmic scale
+inline constexpr double median_roughness = 0.1, log_roughness_sd = 0.30;  // mm, lognormal: steel some decades in use
+inline constexpr double usual_demand = 15.0, demand_sd = 0.4;             // L/s, normal: the consumers' own meters
+inline constexpr double set_inlet_pressure = 620.0, inlet_pressure_sd = 1.5;  // kPa, gauge, normal: held by a pump
 
 /// One way the main could be, and what flows in it then.
 struct state {
-  double position;           // m from the plant
-  double opening;            // cm2
-  double roughness;          // mm
-  double demand;             // L/s
-  double inlet_pressure;     // kPa
-  double leak_flow;          // L/s
-  double loss_upstream;      // kPa/m
-  double loss_downstream;    // kPa/m
+  double position;         // m from the plant
+  double opening;          // cm2
+  double roughness;        // mm
+  double demand;           // L/s
+  double inlet_pressure;   // kPa
+  double leak_flow;        // L/s
+  double loss_upstream;    // kPa/m
+  double loss_downstream;  // kPa/m
 
   /// Pressure at a distance from the plant (kPa).
   double pressure_at(double x) const {
@@ -46,8 +46,9 @@ struct state {
 inline state settle(double position, double opening, double roughness, double demand, double inlet_pressure) {
   pipe const along{length, inside_diameter, 1e-3 * roughness};
   steady_flow const flow = solve(along, hot_water, 1e3 * inlet_pressure, 1e-3 * demand, position, 1e-4 * opening);
-  return {position, opening, roughness, demand, inlet_pressure, 1e3 * flow.leak_flow, 1e-3 * flow.gradient_upstream,
-          1e-3 * flow.gradient_downstream};
+  double const leak_flow = 1e3 * flow.leak_flow;
+  double const upstream = 1e-3 * flow.gradient_upstream, downstream = 1e-3 * flow.gradient_downstream;
+  return {position, opening, roughness, demand, inlet_pressure, leak_flow, upstream, downstream};
 }
 
 /// The simulator: draws what is not known and solves the flow.

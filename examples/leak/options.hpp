@@ -60,15 +60,24 @@ inline options options_from(int count, char const* const* words) {
       if (!chosen.readings.empty()) throw bad_option("two files of readings are given; one is needed");
       chosen.readings = path;
     };
-    if (word == "--help" || word == "-h") chosen.help = true;
-    else if (word == "--check") chosen.check = true;
-    else if (word == "--readings") file(next());
-    else if (word == "--states") chosen.states = next();
-    else if (word == "--samples") chosen.samples = number(1, 1'000'000'000);
-    else if (word == "--seed") chosen.seed = number(0, ~std::uint64_t{0});
-    else if (word == "--threads") chosen.threads = number(0, 4096);
-    else if (word.starts_with("-")) throw bad_option("there is no option " + std::string(word));
-    else file(word);
+    if (word == "--help" || word == "-h")
+      chosen.help = true;
+    else if (word == "--check")
+      chosen.check = true;
+    else if (word == "--readings")
+      file(next());
+    else if (word == "--states")
+      chosen.states = next();
+    else if (word == "--samples")
+      chosen.samples = number(1, 1'000'000'000);
+    else if (word == "--seed")
+      chosen.seed = number(0, ~std::uint64_t{0});
+    else if (word == "--threads")
+      chosen.threads = number(0, 4096);
+    else if (word.starts_with("-"))
+      throw bad_option("there is no option " + std::string(word));
+    else
+      file(word);
   }
   if (chosen.readings.empty() && !chosen.help) throw bad_option("a file of readings is needed");
   return chosen;

@@ -26,7 +26,7 @@ inline std::string fixed(double value, int decimals) {
   return text;
 }
 
-/// A text in lines of at most 100 characters, each ended; its own line ends stay, and no line ends inside "8.5 +- 0.6 %".
+/// A text in lines of at most 100 characters, each ended. Its own line ends stay; "8.5 +- 0.6 %" is not broken.
 inline std::string wrapped(std::string const& text) {
   std::string all;
   std::size_t column = 0;
@@ -61,8 +61,8 @@ inline std::string with_error(steelyard::estimate const& e) {
   return fixed(e.value, decimals) + " +- " + fixed(e.standard_error, decimals);
 }
 
-/// A chance in percent: with its standard error, or only that it is next to nothing or to all; where no state (every state)
-/// showed it, the most (the least) that it can be.
+/// A chance in percent: with its standard error, or only that it is next to nothing or to all; where no state (every
+/// state) showed it, the most (the least) that it can be.
 inline std::string percent(steelyard::estimate const& chance) {
   steelyard::estimate const e = chance.scaled(100.0);
   if (e.never_seen()) return "under " + fixed(std::max(0.01, e.error_interval(0.95).upper), 2);
@@ -76,7 +76,8 @@ inline std::string percent(steelyard::estimate const& chance) {
 inline std::string bar(steelyard::estimate const& chance, double full, std::size_t width) {
   steelyard::interval const error = chance.error_interval(0.95);
   auto const cells = [&](double p) {
-    return static_cast<std::size_t>(std::clamp(std::lround(static_cast<double>(width) * p / full), 0L, static_cast<long>(width)));
+    return static_cast<std::size_t>(
+        std::clamp(std::lround(static_cast<double>(width) * p / full), 0L, static_cast<long>(width)));
   };
   std::size_t const sure = cells(error.lower_known ? error.lower : 0.0);
   std::size_t const most = std::max(sure, cells(error.upper_known ? error.upper : 1.0));
@@ -133,8 +134,8 @@ std::string states_file(Sample const& sample, Ensemble const& chosen) {
   out << "sample,position_m,opening_cm2,roughness_mm,demand_L_per_s,inlet_pressure_kPa,leak_flow_L_per_s\n";
   for (std::size_t slot = 0; slot < chosen.size(); ++slot) {
     state const& s = chosen[slot];
-    out << sample.sample_index(chosen.indices()[slot]) << ',' << s.position << ',' << s.opening << ',' << s.roughness << ','
-        << s.demand << ',' << s.inlet_pressure << ',' << s.leak_flow << '\n';
+    out << sample.sample_index(chosen.indices()[slot]) << ',' << s.position << ',' << s.opening << ',' << s.roughness
+        << ',' << s.demand << ',' << s.inlet_pressure << ',' << s.leak_flow << '\n';
   }
   return out.str();
 }

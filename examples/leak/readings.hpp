@@ -34,9 +34,8 @@ struct instrument_scale {
   std::string_view name, unit;
   double lowest, highest;
 };
-inline constexpr std::array<instrument_scale, 3> instruments{{{"logger 1", "kPa", 0.0, 1000.0},
-                                                             {"logger 2", "kPa", 0.0, 1000.0},
-                                                             {"make-up meter", "L/s", 0.0, 10.0}}};
+inline constexpr std::array<instrument_scale, 3> instruments{
+    {{"logger 1", "kPa", 0.0, 1000.0}, {"logger 2", "kPa", 0.0, 1000.0}, {"make-up meter", "L/s", 0.0, 10.0}}};
 
 /// The shortest text that reads back as the number.
 inline std::string shortest(double value) {
@@ -46,7 +45,8 @@ inline std::string shortest(double value) {
 
 inline std::string listed() {
   std::string names;
-  for (instrument_scale const& each : instruments) names += (names.empty() ? "'" : ", '") + std::string(each.name) + "'";
+  for (instrument_scale const& each : instruments)
+    names += (names.empty() ? "'" : ", '") + std::string(each.name) + "'";
   return names;
 }
 
@@ -55,27 +55,29 @@ inline std::string listed() {
 /// @throws bad_file with one sentence that names the file and the line
 inline readings readings_from(csv_file const& file) {
   using detail::shortest;
-  std::size_t const name = file.column("instrument"), position = file.column("position_m"), value = file.column("reading"),
-                    unit = file.column("unit");
+  std::size_t const name = file.column("instrument"), position = file.column("position_m"),
+                    value = file.column("reading"), unit = file.column("unit");
   std::array<instrument_row, detail::instruments.size()> found{};
   for (csv_file::row const& row : file.rows()) {
     std::size_t which = 0;
     while (which < found.size() && detail::instruments[which].name != row.fields[name]) ++which;
     if (which == found.size())
-      throw bad_file(file.at(row.line) + "there is no instrument '" + row.fields[name] + "'; known are " + detail::listed());
+      throw bad_file(file.at(row.line) + "there is no instrument '" + row.fields[name] + "'; known are " +
+                     detail::listed());
     detail::instrument_scale const& scale = detail::instruments[which];
     std::string const what = std::string(scale.name);
     if (found[which].line != 0)
       throw bad_file(file.at(row.line) + what + " was read already in line " + std::to_string(found[which].line));
     if (row.fields[unit] != scale.unit)
-      throw bad_file(file.at(row.line) + what + " reads in " + std::string(scale.unit) + ", not in '" + row.fields[unit] + "'");
+      throw bad_file(file.at(row.line) + what + " reads in " + std::string(scale.unit) + ", not in '" +
+                     row.fields[unit] + "'");
     found[which] = {file.number(row, position), file.number(row, value), row.line};
     if (!(found[which].position >= 0.0 && found[which].position <= length))
-      throw bad_file(file.at(row.line) + "a position of " + shortest(found[which].position) + " m is off the main, which is " +
-                     shortest(length) + " m long");
+      throw bad_file(file.at(row.line) + "a position of " + shortest(found[which].position) +
+                     " m is off the main, which is " + shortest(length) + " m long");
     if (!(found[which].value >= scale.lowest && found[which].value <= scale.highest))
-      throw bad_file(file.at(row.line) + "a reading of " + shortest(found[which].value) + " is off the scale of " + what +
-                     ", which runs from " + shortest(scale.lowest) + " to " + shortest(scale.highest) + " " +
+      throw bad_file(file.at(row.line) + "a reading of " + shortest(found[which].value) + " is off the scale of " +
+                     what + ", which runs from " + shortest(scale.lowest) + " to " + shortest(scale.highest) + " " +
                      std::string(scale.unit));
   }
   for (std::size_t which = 0; which < found.size(); ++which)

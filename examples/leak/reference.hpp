@@ -5,9 +5,9 @@
 //   The leak flow q takes the place of the opening A = q / (C sqrt(2 p / density)), p the pressure at the leak, so that
 //   everything follows in closed form; the prior of q at fixed other unknowns is that of log A times
 //     d(log A)/dq = 1/q + x g'(q) / (2 p),   g' the derivative of the pressure gradient upstream.
-//   The inlet pressure is integrated out: both loggers are normal about it. Its mean given the readings stands for it in
-//   the factor above, which moves it by less than 1e-5.
-//   A display cell of width h has the probability h times a normal density of variance sd^2 + h^2/12, to (h/sd)^4.
+//   The inlet pressure is integrated out: both loggers are normal about it. Its mean given the readings stands for it
+//   in the factor above, which moves it by less than 1e-5. A display cell of width h has the probability h times a
+//   normal density of variance sd^2 + h^2/12, to (h/sd)^4.
 // On the shipped readings twice as many nodes in every direction change no chance by more than 1e-8.
 
 #include <algorithm>
@@ -26,9 +26,9 @@ namespace leak {
 
 struct reference {
   double log_evidence = 0.0;
-  std::vector<double> section;          // chance of each 100 m
-  std::vector<double> flow_below;       // chance that the leak flow is below each of the flows asked for
-  double mean_leak_flow = 0.0;          // L/s
+  std::vector<double> section;     // chance of each 100 m
+  std::vector<double> flow_below;  // chance that the leak flow is below each of the flows asked for
+  double mean_leak_flow = 0.0;     // L/s
 };
 
 namespace detail {
@@ -66,7 +66,8 @@ inline nodes normal_nodes(double step) {
 /// @param flows  rising leak flows (L/s) at which the cumulative chance is wanted, near the meter's reading
 inline reference by_quadrature(readings const& read, std::vector<double> const& flows) {
   double const two_pi = 2.0 * 3.14159265358979324;
-  double const v = logger_sd * logger_sd + display_step * display_step / 12.0, t = inlet_pressure_sd * inlet_pressure_sd;
+  double const v = logger_sd * logger_sd + display_step * display_step / 12.0;
+  double const t = inlet_pressure_sd * inlet_pressure_sd;
   double const determinant = v * v + 2.0 * v * t, log_range = std::log(largest_opening / smallest_opening);
   double const x1 = read.logger_1.position, x2 = read.logger_2.position;
 
@@ -106,7 +107,8 @@ inline reference by_quadrature(readings const& read, std::vector<double> const& 
             double const square = ((a * a + b * b) * (v + t) - 2.0 * t * a * b) / determinant;
             if (square > 80.0) continue;
             double const inlet = set_inlet_pressure + (a + b) * t / (v + 2.0 * t), at_leak = inlet - up * x;
-            double const opening = 1e4 * 1e-3 * q / (discharge_coefficient * std::sqrt(2e3 * at_leak / hot_water.density));
+            double const opening =
+                1e4 * 1e-3 * q / (discharge_coefficient * std::sqrt(2e3 * at_leak / hot_water.density));
             if (!(opening >= smallest_opening && opening <= largest_opening)) continue;
             double const part = weight * x_weight * (1.0 / q + 0.5 * x * slope / at_leak) * std::exp(-0.5 * square);
             total += part;

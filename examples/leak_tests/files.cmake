@@ -1,6 +1,6 @@
 # SPDX-License-Identifier: BSL-1.0
-# What the leak example does with wrong files and wrong command lines: one line on standard error that names what is wrong,
-# nothing on standard output, an exit code above zero, and no file of states, whole or half.
+# What the leak example does with wrong files and wrong command lines: one line on standard error that names what is
+# wrong, nothing on standard output, an exit code above zero, and no file of states, whole or half.
 # Given: PROGRAM, READINGS. Works in the current directory.
 cmake_policy(VERSION 3.22)
 set(cases 0)
@@ -55,14 +55,15 @@ wrong("wrong.csv: the file is empty" "# nothing but a comment\n")
 wrong("wrong.csv: there is a header but no row behind it" "${header}")
 wrong("wrong.csv: the column 'reading' is missing; there are 'instrument', 'position_m', 'unit'"
       "instrument,position_m,unit\nlogger 1,450,kPa\n")
-wrong("wrong.csv: the column 'instrument' is missing" "instrument\;position_m\;reading\;unit\nlogger 1\;450\;567.9\;kPa\n")
+wrong("wrong.csv: the column 'instrument' is missing"
+      "instrument\;position_m\;reading\;unit\nlogger 1\;450\;567.9\;kPa\n")
 wrong("wrong.csv, line 2: 'high' stands in column 'reading', where a number is due"
       "${header}logger 1,450,high,kPa\n${two}${meter}")
 wrong("wrong.csv, line 3: '' stands in column 'position_m', where a number is due"
       "${header}${one}logger 2,,497.2,kPa\n${meter}")
 wrong("wrong.csv, line 4: 'nan' stands in column 'reading', where a number is due"
       "${header}${one}${two}make-up meter,0,nan,L/s\n")
-wrong("wrong.csv, line 2: there are 5 fields where the header names 4 columns"
+wrong("wrong.csv, line 2: fields in this row: 5, columns in the header: 4"
       "${header}logger 1,450,567,9,kPa\n${two}${meter}")
 wrong("wrong.csv, line 2: a reading of 1567.9 is off the scale of logger 1, which runs from 0 to 1000 kPa"
       "${header}logger 1,450,1567.9,kPa\n${two}${meter}")
@@ -83,7 +84,8 @@ refused(1 "nowhere.csv: there is no such file" nowhere.csv --states "${states}")
 refused(1 ": this is a folder, not a file" . --states "${states}")
 refused(1 "the states cannot be written there" "${READINGS}" --samples 20000 --states no/such/folder.csv)
 refused(2 "a file of readings is needed; --help shows" --states "${states}")
-refused(2 "--samples takes a whole number from 1 to 1000000000, not 'many'" "${READINGS}" --samples many --states "${states}")
+refused(2 "--samples takes a whole number from 1 to 1000000000, not 'many'" "${READINGS}" --samples many
+        --states "${states}")
 refused(2 "there is no option --sample;" "${READINGS}" --sample 3 --states "${states}")
 file(COPY_FILE "${READINGS}" kept.csv)
 refused(2 "the states would overwrite the readings in kept.csv" kept.csv --states kept.csv)
@@ -103,9 +105,11 @@ endif()
 
 # A right run: 200 states and a header, nothing left over, and the same file whatever the threads.
 foreach(threads IN ITEMS 1 2)
-  execute_process(COMMAND "${PROGRAM}" --readings "${READINGS}" --samples 100000 --threads ${threads} --states right_${threads}.csv
+  execute_process(COMMAND "${PROGRAM}" --readings "${READINGS}" --samples 100000 --threads ${threads}
+                          --states right_${threads}.csv
                   RESULT_VARIABLE returned OUTPUT_VARIABLE out ERROR_VARIABLE err)
-  if(NOT returned EQUAL 0 OR NOT err STREQUAL "" OR NOT out MATCHES "Can this be believed" OR EXISTS right_${threads}.csv.part)
+  if(NOT returned EQUAL 0 OR NOT err STREQUAL "" OR NOT out MATCHES "Can this be believed"
+     OR EXISTS right_${threads}.csv.part)
     string(APPEND faults "\n  a right file with ${threads} threads: returned ${returned}, ${err}")
   endif()
   file(STRINGS right_${threads}.csv rows)
@@ -121,9 +125,11 @@ if(NOT first STREQUAL second)
 endif()
 # The same readings as another program may write them: a byte order mark, other columns and order, quotes, CR LF.
 string(ASCII 239 187 191 mark)
-file(WRITE other.csv "${mark}unit,reading,note,position_m,instrument\r\n\"L/s\",2.46,\"at night, steady\",0,make-up meter\r\n"
+file(WRITE other.csv "${mark}unit,reading,note,position_m,instrument\r\n"
+                     "\"L/s\",2.46,\"at night, steady\",0,make-up meter\r\n"
                      "kPa,4.972e2,,1150.0,logger 2\r\nkPa,567.9,,450,\"logger 1\"\r\n")
-execute_process(COMMAND "${PROGRAM}" other.csv --samples 100000 --states right_2.csv RESULT_VARIABLE returned OUTPUT_QUIET)
+execute_process(COMMAND "${PROGRAM}" other.csv --samples 100000 --states right_2.csv
+                RESULT_VARIABLE returned OUTPUT_QUIET)
 file(READ right_2.csv second)
 if(NOT returned EQUAL 0 OR NOT first STREQUAL second)
   string(APPEND faults "\n  the same readings in another file gave other states")

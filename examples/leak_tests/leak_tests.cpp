@@ -63,19 +63,24 @@ void friction() {
   leak::pipe const ductile{6.0, 0.3, 0.00012};
   near(leak::friction_factor(6e5, 0.0004), 0.0169, 0.5e-4 / 0.0169, "friction factor of the worked problem");
   double const flow = 2.0 * 0.25 * 3.14159265358979 * 0.3 * 0.3;
-  near(leak::pressure_gradient(flow, ductile, cold) * 6.0 / (1000.0 * 9.81), 0.0689, 3e-3, "head lost in the worked problem");
-  // White, Fluid Mechanics, the asphalted cast-iron example (from memory): Re 270 000, roughness 0.0008 D, Moody chart 0.02.
+  near(leak::pressure_gradient(flow, ductile, cold) * 6.0 / (1000.0 * 9.81), 0.0689, 3e-3,
+       "head lost in the worked problem");
+  // White, Fluid Mechanics, the asphalted cast-iron example (from memory): Re 270 000, roughness 0.0008 D, Moody chart
+  // 0.02.
   near(leak::friction_factor(2.7e5, 0.0008), 0.02, 0.02, "friction factor off the Moody chart");
   // The formula promises about 1 % of Colebrook's; over this range 1.1 % is the worst, by 30-digit arithmetic.
   for (double reynolds = 5e4; reynolds < 2.1e6; reynolds *= 1.3)
     for (double roughness = 1e-4; roughness < 1.1e-2; roughness *= 1.3)
-      near(leak::friction_factor(reynolds, roughness), colebrook(reynolds, roughness), 0.012, "Swamee-Jain beside Colebrook");
+      near(leak::friction_factor(reynolds, roughness), colebrook(reynolds, roughness), 0.012,
+           "Swamee-Jain beside Colebrook");
   // The healthy main at 15 L/s and 0.1 mm by 30-digit arithmetic: v 1.087852 m/s, Re 394 905, Colebrook f 0.01926382,
   // 100.342 kPa over 1200 m; Swamee-Jain f 0.01939170, 101.008 kPa.
   leak::pipe const main_pipe{leak::length, leak::inside_diameter, 1e-4};
   near(leak::velocity(0.015, leak::inside_diameter), 1.08785151561566, 1e-12, "velocity");
-  near(1e-3 * leak::length * leak::pressure_gradient(0.015, main_pipe, leak::hot_water), 101.008220935121, 1e-9, "healthy main");
-  near(1e-3 * leak::length * leak::pressure_gradient(0.015, main_pipe, leak::hot_water), 100.342133543698, 0.01, "by Colebrook");
+  near(1e-3 * leak::length * leak::pressure_gradient(0.015, main_pipe, leak::hot_water), 101.008220935121, 1e-9,
+       "healthy main");
+  near(1e-3 * leak::length * leak::pressure_gradient(0.015, main_pipe, leak::hot_water), 100.342133543698, 0.01,
+       "by Colebrook");
   refuses<std::domain_error>([] { leak::friction_factor(2000.0, 1e-3); }, "5e3 to 1e8");
 }
 
@@ -109,13 +114,15 @@ void steady() {
           double const inlet = leak::set_inlet_pressure - z2 * leak::inlet_pressure_sd;
           leak::state const s = leak::settle(position, opening, roughness, demand, inlet);
           leak::pipe const along{leak::length, leak::inside_diameter, 1e-3 * roughness};
-          near(s.leak_flow, 1e3 * by_bisection(along, 1e3 * inlet, 1e-3 * demand, position, 1e-4 * opening), 1e-8, "leak flow");
-          near(1e-3 * s.leak_flow, leak::orifice_flow(1e-4 * opening, 1e3 * s.pressure_at(position), leak::hot_water), 1e-8,
-               "the flow fits the pressure at the leak");
+          near(s.leak_flow, 1e3 * by_bisection(along, 1e3 * inlet, 1e-3 * demand, position, 1e-4 * opening), 1e-8,
+               "leak flow");
+          near(1e-3 * s.leak_flow, leak::orifice_flow(1e-4 * opening, 1e3 * s.pressure_at(position), leak::hot_water),
+               1e-8, "the flow fits the pressure at the leak");
           holds(s.pressure_at(0.0) == inlet && s.loss_upstream > s.loss_downstream, "upstream flows more");
           near(s.pressure_at(position + 1e-6), s.pressure_at(position), 1e-6, "the pressure has no step at the leak");
         }
-  // A narrow pipe, where the leak takes nearly all of the pressure that friction has left and plain substitution swings.
+  // A narrow pipe, where the leak takes nearly all of the pressure that friction has left and plain substitution
+  // swings.
   for (double const diameter : {0.076, 0.08, 0.1})
     for (double const opening : {1e-5, 1e-4, 3e-4, 3e-3}) {
       leak::pipe const narrow{leak::length, diameter, 1e-4};
@@ -123,7 +130,8 @@ void steady() {
            by_bisection(narrow, 6e5, 0.008, 1200.0, opening), 1e-8, "leak flow in a narrow pipe");
     }
   leak::pipe const too_narrow{leak::length, 0.04, 1e-4};
-  refuses<std::domain_error>([&] { leak::solve(too_narrow, leak::hot_water, 6e5, 0.008, 1200.0, 3e-4); }, "used up by friction");
+  refuses<std::domain_error>([&] { leak::solve(too_narrow, leak::hot_water, 6e5, 0.008, 1200.0, 3e-4); },
+                             "used up by friction");
 }
 
 /// The shipped readings are what the instruments draw from the true state, in the order of the file, at seed 1.
@@ -146,7 +154,8 @@ leak::csv_file file_of(std::string const& text) {
 }
 
 void reader() {
-  auto const fine = file_of("\xEF\xBB\xBF# a comment, with a comma\r\n\r\n name ,\"the, value\" , x\r\n a b ,\"say \"\"so\"\"\",+1.5e2\r\n");
+  auto const fine = file_of(
+      "\xEF\xBB\xBF# a comment, with a comma\r\n\r\n name ,\"the, value\" , x\r\n a b ,\"say \"\"so\"\"\",+1.5e2\r\n");
   holds(fine.comments().size() == 1 && fine.comments()[0] == "a comment, with a comma", "comments");
   holds(fine.rows().size() == 1 && fine.rows()[0].line == 4, "rows know their line");
   holds(fine.rows()[0].fields[fine.column("name")] == "a b", "spaces are cut");
@@ -160,15 +169,19 @@ void reader() {
   refuses<bad_file>([] { file_of(""); }, "reader_test.csv: the file is empty");
   refuses<bad_file>([] { file_of("# only\n\n"); }, "the file is empty");
   refuses<bad_file>([] { file_of("a,b\n"); }, "no row behind it");
-  refuses<bad_file>([] { file_of("a,b\n1,2,3\n"); }, "line 2: there are 3 fields where the header names 2");
-  refuses<bad_file>([] { file_of("a,b\n1\n"); }, "line 2: there is 1 field where the header names 2");
+  refuses<bad_file>([] { file_of("a,b\n1,2,3\n"); }, "line 2: fields in this row: 3, columns in the header: 2");
+  refuses<bad_file>([] { file_of("a,b\n1\n"); }, "line 2: fields in this row: 1, columns in the header: 2");
   refuses<bad_file>([] { file_of("a,b\n\"1,2\n"); }, "line 2: a quotation mark is opened");
   refuses<bad_file>([] { file_of("a,b\n\"1\"2,3\n"); }, "line 2: something stands behind");
   refuses<bad_file>([] { file_of("a,b\n1,2\n").column("c"); }, "the column 'c' is missing; there are 'a', 'b'");
   refuses<bad_file>([] { file_of("a,a\n1,2\n").column("a"); }, "two columns are called 'a'");
   for (std::string const text : {"", "x", "1.5x", "nan", "inf", "-inf", "1e999", "0x10", "1 2", "--1", "+-1", "1;5"})
-    refuses<bad_file>([&] { auto const f = file_of("a,b\n1," + text + "\n"); f.number(f.rows()[0], 1); },
-                      "line 2: '" + text + "' stands in column 'b', where a number is due");
+    refuses<bad_file>(
+        [&] {
+          auto const f = file_of("a,b\n1," + text + "\n");
+          f.number(f.rows()[0], 1);
+        },
+        "line 2: '" + text + "' stands in column 'b', where a number is due");
 }
 
 void words() {
@@ -187,8 +200,10 @@ void words() {
     words.insert(words.end(), line.begin(), line.end());
     return leak::options_from(static_cast<int>(words.size()), words.data());
   };
-  auto const all = asked({"--readings", "r", "--states", "s", "--samples", "7", "--seed", "8", "--threads", "0", "--check"});
-  holds(all.readings == "r" && all.states == "s" && all.samples == 7 && all.seed == 8 && all.threads == 0 && all.check, "options");
+  auto const all =
+      asked({"--readings", "r", "--states", "s", "--samples", "7", "--seed", "8", "--threads", "0", "--check"});
+  holds(all.readings == "r" && all.states == "s" && all.samples == 7 && all.seed == 8 && all.threads == 0 && all.check,
+        "options");
   holds(asked({"r"}).readings == "r" && asked({"--help"}).help, "a file alone, and help");
   using leak::bad_option;
   refuses<bad_option>([&] { asked({}); }, "a file of readings is needed");
