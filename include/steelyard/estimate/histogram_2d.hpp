@@ -51,13 +51,13 @@ class histogram_2d_estimator {
 
   void add(std::span<double const> values, std::span<double const> weights, weighted_view const& view) {
     std::size_t const n = weights.size(), row = y_->size() + 3;
-    detail::group_sums<4> block;
+    detail::group_sums<3> block;
     detail::grouped_cells of_groups;
     for (std::size_t i = 0; i < n; ++i) {
       auto const cell = static_cast<std::uint32_t>(x_->cell(values[i]) * row + y_->cell(values[n + i]));
       detail::cell_sums one;
       one.add(view.count(i), weights[i]);
-      block.push(cell, {one.weight, one.second, one.fourth, one.entries});
+      block.push(cell, {one.weight, one.second, one.fourth});
       if (!view.groups.empty()) of_groups.add(view.groups[i], cell, view.count(i) * weights[i]);
     }
     block.settle();
@@ -86,14 +86,14 @@ class histogram_2d_estimator {
 
   template <class Self>
   static auto fields(Self& self) {
-    return std::tuple_cat(detail::group_sums<4>::fields(self.cells_), detail::grouped_cells::fields(self.groups_));
+    return std::tuple_cat(detail::group_sums<3>::fields(self.cells_), detail::grouped_cells::fields(self.groups_));
   }
 
  private:
   std::tuple<First, Second> readouts_;
   std::optional<bins> x_, y_;
   bool wants_pilot_;
-  detail::group_sums<4> cells_;
+  detail::group_sums<3> cells_;
   detail::grouped_cells groups_;
 };
 

@@ -23,12 +23,15 @@ namespace steelyard::inline v1 {
 class histogram_2d_result {
  public:
   /// @param cells  powers of the weights by cell, x-bin (y-bins + 3) + y-bin, see `bins::cell`
-  histogram_2d_result(bins x, bins y, detail::group_sums<4> const& cells, detail::grouped_cells groups, run_facts const& facts)
+  histogram_2d_result(bins x, bins y, detail::group_sums<3> const& cells, detail::grouped_cells groups, run_facts const& facts)
       : x_(std::move(x)), y_(std::move(y)), groups_(std::move(groups)), facts_(facts) {
     std::size_t const n = cells.size();
     for (std::size_t k = 0; k < n; ++k) {
       labels_.push_back(cells.label(k));
-      sums_.push_back({cells[k][0], cells[k][1], cells[k][2], cells[k][3]});
+      detail::cell_sums& one = sums_.emplace_back();
+      one.weight = cells[k][0];
+      one.second = cells[k][1];
+      one.fourth = cells[k][2];
     }
     rest_.resize(n);
     detail::cell_sums before, after;

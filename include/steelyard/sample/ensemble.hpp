@@ -8,6 +8,7 @@
 #include <memory>
 #include <span>
 #include <string>
+#include <type_traits>
 #include <utility>
 #include <vector>
 
@@ -254,7 +255,7 @@ class ensemble {
     double const variance = k > 1.0 ? squares / (k * (k - 1.0)) : 0.0;
     if (parent_) {
       auto const asked = parent_->estimate(steelyard::expectation(readout),
-                                           detail::resampling_error_estimator<Readout>(readout, scheme_, size()));
+                                           detail::resampling_error_estimator<std::decay_t<Readout>>(readout, scheme_, size()));
       return detail::resampled_estimate(mean, asked.template get<0>(), asked.template get<1>(), carriers, k, event);
     }
     // Without the parent: sum W^2 d over it is the mean of W d over draws in proportion to W.
