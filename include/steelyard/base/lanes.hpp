@@ -18,42 +18,7 @@
 // and the flags. Vectors are GCC's and Clang's own types, used inside functions
 // compiled for their instruction set and never passed by value.
 
-#if !defined(STEELYARD_PLAIN_KERNELS) && defined(__GNUC__) && defined(__x86_64__)
-#define STEELYARD_DETAIL_INLINE inline __attribute__((always_inline))
-#if defined(__clang__)
-#define STEELYARD_DETAIL_AVX2 _Pragma("clang attribute push(__attribute__((target(\"avx2\"))), apply_to = function)")
-#define STEELYARD_DETAIL_AVX512 \
-  _Pragma("clang attribute push(__attribute__((target(\"avx512f\"))), apply_to = function)")
-#define STEELYARD_DETAIL_POP _Pragma("clang attribute pop")
-#else
-#define STEELYARD_DETAIL_AVX2 _Pragma("GCC push_options") _Pragma("GCC target(\"avx2\")")
-#define STEELYARD_DETAIL_AVX512 _Pragma("GCC push_options") _Pragma("GCC target(\"avx512f\")")
-#define STEELYARD_DETAIL_POP _Pragma("GCC pop_options")
-#endif
-#define STEELYARD_DETAIL_VECTORS(BYTES)                           \
-  typedef double vec __attribute__((vector_size(BYTES)));         \
-  typedef std::uint64_t uvec __attribute__((vector_size(BYTES))); \
-  STEELYARD_DETAIL_INLINE void hold(vec& v) noexcept {            \
-    __asm__("" : "+v"(v));                                        \
-  }
-// The text between the brackets, once for every width.
-#define STEELYARD_DETAIL_EACH_WIDTH(...)                                                             \
-  namespace plain {                                                                                  \
-  __VA_ARGS__                                                                                        \
-  }                                                                                                  \
-  namespace sse2 {                                                                                   \
-  STEELYARD_DETAIL_VECTORS(16) __VA_ARGS__                                                           \
-  }                                                                                                  \
-  STEELYARD_DETAIL_AVX2 namespace avx2 { STEELYARD_DETAIL_VECTORS(32) __VA_ARGS__ }                  \
-  STEELYARD_DETAIL_POP STEELYARD_DETAIL_AVX512 namespace avx512 { STEELYARD_DETAIL_VECTORS(64) __VA_ARGS__ } \
-  STEELYARD_DETAIL_POP
-#else
-#define STEELYARD_DETAIL_INLINE inline
-#define STEELYARD_DETAIL_EACH_WIDTH(...) \
-  namespace plain {                      \
-  __VA_ARGS__                            \
-  }
-#endif
+#include <steelyard/base/widths_begin.hpp>
 
 namespace steelyard::inline v1::detail {
 
@@ -65,6 +30,22 @@ using vec = double;
 using uvec = std::uint64_t;
 STEELYARD_DETAIL_INLINE void hold(vec& v) noexcept { v = fence(v); }
 }  // namespace plain
+
+#if defined(STEELYARD_DETAIL_AVX2)
+#define STEELYARD_DETAIL_VECTORS(BYTES)                           \
+  typedef double vec __attribute__((vector_size(BYTES)));         \
+  typedef std::uint64_t uvec __attribute__((vector_size(BYTES))); \
+  STEELYARD_DETAIL_INLINE void hold(vec& v) noexcept {            \
+    __asm__("" : "+v"(v));                                        \
+  }
+namespace sse2 {
+STEELYARD_DETAIL_VECTORS(16)
+}
+STEELYARD_DETAIL_AVX2 namespace avx2 { STEELYARD_DETAIL_VECTORS(32) }
+STEELYARD_DETAIL_POP STEELYARD_DETAIL_AVX512 namespace avx512 { STEELYARD_DETAIL_VECTORS(64) }
+STEELYARD_DETAIL_POP
+#undef STEELYARD_DETAIL_VECTORS
+#endif
 
 STEELYARD_DETAIL_EACH_WIDTH(
 
@@ -218,11 +199,4 @@ inline void raise_maximum(double const* values, std::size_t groups, double* lane
 
 }  // namespace steelyard::inline v1::detail
 
-#undef STEELYARD_DETAIL_EACH_WIDTH
-#undef STEELYARD_DETAIL_INLINE
-#if defined(STEELYARD_DETAIL_VECTORS)
-#undef STEELYARD_DETAIL_VECTORS
-#undef STEELYARD_DETAIL_AVX2
-#undef STEELYARD_DETAIL_AVX512
-#undef STEELYARD_DETAIL_POP
-#endif
+#include <steelyard/base/widths_end.hpp>

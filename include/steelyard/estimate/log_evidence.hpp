@@ -29,6 +29,7 @@ class log_evidence_estimator {
   [[nodiscard]] log_evidence_estimator fresh() const { return {}; }
 
   void add(std::span<double const>, std::span<double const> weights, weighted_view const& view) {
+    if (view.counts.empty() && view.groups.empty() && view.base_weights.empty()) return sums_.add_even(weights);
     sums_.add(
         weights.size(), [&](std::size_t i) { return view.count(i); }, [&](std::size_t i) { return weights[i]; },
         [&](std::size_t i) { return view.base_weights.empty() ? 1.0 : view.base_weights[i]; }, !view.groups.empty(),

@@ -6,6 +6,7 @@
 #include <tuple>
 
 #include <steelyard/base/algorithm.hpp>
+#include <steelyard/base/moment_lanes.hpp>
 #include <steelyard/estimate/estimate.hpp>
 #include <steelyard/estimate/group_sums.hpp>
 #include <steelyard/estimate/run_facts.hpp>
@@ -34,37 +35,10 @@ class mean_sums {
     std::size_t const n = view.weights.size();
     if (n == 0) return;
     mean_sums block;
-    for (std::size_t i = 0; i < n; ++i) block.weight_ += view.count(i) * view.weights[i];
-    for (std::size_t k = 0; k < N; ++k) {
-      double const* const f = view.values.data() + k * n;
-      double const first = f[0];
-      double sum = 0.0;
-      for (std::size_t i = 0; i < n; ++i) sum += view.count(i) * view.weights[i] * (f[i] - first);
-      block.mean_[k] = block.weight_ > 0.0 ? first + sum / block.weight_ : first;
-    }
-    std::array<double, N> d{};
-    for (std::size_t i = 0; i < n; ++i) {
-      double const w = view.weights[i], w2 = view.count(i) * (w * w), w4 = w2 * (w * w);
-      block.second_ += w2;
-      block.fourth_ += w4;
-      for (std::size_t k = 0; k < N; ++k) {
-        d[k] = view.values[k * n + i] - block.mean_[k];
-        double const d2 = d[k] * d[k];
-        block.second_1_[k] += w2 * d[k];
-        block.fourth_n_[k][0] += w4 * d[k];
-        block.fourth_n_[k][1] += w4 * d2;
-        block.fourth_n_[k][2] += w4 * (d2 * d[k]);
-        block.fourth_n_[k][3] += w4 * (d2 * d2);
-        for (std::size_t j = 0; j <= k; ++j) block.second_2_[pair(k, j)] += w2 * (d[k] * d[j]);
-      }
-      if (!view.groups.empty()) {
-        std::array<double, N + 1> terms{};
-        terms[0] = view.count(i) * w;
-        for (std::size_t k = 0; k < N; ++k) terms[k + 1] = terms[0] * d[k];
-        block.groups_.push(view.groups[i], terms);
-      }
-    }
-    block.groups_.settle();
+    if (view.counts.empty() && view.groups.empty())
+      block.add_plain(view);
+    else
+      block.add_counted(view);
     *this += block;
   }
 
@@ -142,6 +116,66 @@ class mean_sums {
   }
 
  private:
+  /// Entries that stand for one sample each and have no groups: the vector kernels.
+  void add_plain(weighted_view const& view) {
+    std::size_t const n = view.weights.size();
+    for (std::size_t k = 0; k < N; ++k) {
+      std::span<double const> const f = view.values.subspan(k * n, n);
+      double firsts[2], powers[8];
+      sum_block<block_sums::first>(f, view.weights, f[0], f[0], 0.0, firsts);
+      weight_ = firsts[0];
+      mean_[k] = weight_ > 0.0 ? f[0] + firsts[1] / weight_ : f[0];
+      sum_block<block_sums::powers>(f, view.weights, mean_[k], mean_[k], 0.0, powers);
+      second_ = powers[0];
+      second_1_[k] = powers[1];
+      second_2_[pair(k, k)] = powers[2];
+      fourth_ = powers[3];
+      for (std::size_t p = 0; p < 4; ++p) fourth_n_[k][p] = powers[4 + p];
+    }
+    if constexpr (N > 1)
+      for (std::size_t i = 0; i < n; ++i) {
+        double const w2 = view.weights[i] * view.weights[i];
+        for (std::size_t k = 1; k < N; ++k) {
+          double const wd = w2 * (view.values[k * n + i] - mean_[k]);
+          for (std::size_t j = 0; j < k; ++j) second_2_[pair(k, j)] += wd * (view.values[j * n + i] - mean_[j]);
+        }
+      }
+  }
+  void add_counted(weighted_view const& view) {
+    std::size_t const n = view.weights.size();
+    for (std::size_t i = 0; i < n; ++i) weight_ += view.count(i) * view.weights[i];
+    for (std::size_t k = 0; k < N; ++k) {
+      double const* const f = view.values.data() + k * n;
+      double const first = f[0];
+      double sum = 0.0;
+      for (std::size_t i = 0; i < n; ++i) sum += view.count(i) * view.weights[i] * (f[i] - first);
+      mean_[k] = weight_ > 0.0 ? first + sum / weight_ : first;
+    }
+    std::array<double, N> d{};
+    for (std::size_t i = 0; i < n; ++i) {
+      double const w = view.weights[i], w2 = view.count(i) * (w * w), w4 = w2 * (w * w);
+      second_ += w2;
+      fourth_ += w4;
+      for (std::size_t k = 0; k < N; ++k) {
+        d[k] = view.values[k * n + i] - mean_[k];
+        double const d2 = d[k] * d[k];
+        second_1_[k] += w2 * d[k];
+        fourth_n_[k][0] += w4 * d[k];
+        fourth_n_[k][1] += w4 * d2;
+        fourth_n_[k][2] += w4 * (d2 * d[k]);
+        fourth_n_[k][3] += w4 * (d2 * d2);
+        for (std::size_t j = 0; j <= k; ++j) second_2_[pair(k, j)] += w2 * (d[k] * d[j]);
+      }
+      if (!view.groups.empty()) {
+        std::array<double, N + 1> terms{};
+        terms[0] = view.count(i) * w;
+        for (std::size_t k = 0; k < N; ++k) terms[k + 1] = terms[0] * d[k];
+        groups_.push(view.groups[i], terms);
+      }
+    }
+    groups_.settle();
+  }
+
   void move_to(std::array<double, N> const& centre) {
     std::array<double, N> shift{};
     for (std::size_t k = 0; k < N; ++k) shift[k] = mean_[k] - centre[k];

@@ -6,6 +6,7 @@
 #include <tuple>
 #include <utility>
 
+#include <steelyard/base/moment_lanes.hpp>
 #include <steelyard/estimate/estimator.hpp>
 #include <steelyard/estimate/share_sums.hpp>
 
@@ -28,7 +29,14 @@ class probability_estimator {
   [[nodiscard]] probability_estimator fresh() const { return probability_estimator(event_); }
 
   void add(std::span<double const> values, std::span<double const> weights, weighted_view const& view) {
-    for (std::size_t i = 0; i < weights.size(); ++i) (values[i] != 0.0 ? in_ : out_).add(view.count(i), weights[i]);
+    if (view.counts.empty()) {
+      double sums[6];
+      detail::sum_block<detail::block_sums::parted>(values, weights, 0.0, 0.0, 0.0, sums);
+      in_ += detail::cell_sums{sums[0], sums[1], sums[2]};
+      out_ += detail::cell_sums{sums[3], sums[4], sums[5]};
+    } else {
+      for (std::size_t i = 0; i < weights.size(); ++i) (values[i] != 0.0 ? in_ : out_).add(view.count(i), weights[i]);
+    }
     if (view.groups.empty()) return;
     detail::grouped_cells block;
     for (std::size_t i = 0; i < weights.size(); ++i)
@@ -56,8 +64,8 @@ class probability_estimator {
 
   template <class Self>
   static auto fields(Self& self) {
-    return std::tuple_cat(std::tie(self.in_.weight, self.in_.second, self.in_.fourth, self.in_.entries,
-                                   self.out_.weight, self.out_.second, self.out_.fourth, self.out_.entries),
+    return std::tuple_cat(std::tie(self.in_.weight, self.in_.second, self.in_.fourth,
+                                   self.out_.weight, self.out_.second, self.out_.fourth),
                           detail::grouped_cells::fields(self.groups_));
   }
 

@@ -4,9 +4,11 @@
 #include <array>
 #include <cstddef>
 #include <cstdint>
+#include <span>
 #include <tuple>
 
 #include <steelyard/base/algorithm.hpp>
+#include <steelyard/base/moment_lanes.hpp>
 #include <steelyard/estimate/estimate.hpp>
 #include <steelyard/estimate/group_sums.hpp>
 
@@ -47,6 +49,21 @@ class ratio_sums {
       if (grouped) block.groups_.push(group(i), {count * e, count * g});
     }
     block.groups_.settle();
+    *this += block;
+  }
+
+  /// Terms with count 1 and b = 1, their a given: the vector kernels.
+  void add_even(std::span<double const> a) {
+    ratio_sums block;
+    double const n = static_cast<double>(a.size());
+    double firsts[2], powers[4];
+    sum_block<block_sums::first>(a, a, 0.0, 0.0, 0.0, firsts);
+    block.top_ = firsts[0];
+    block.bottom_ = n;
+    double const r = block.reference_ = block.top_ / n;
+    sum_block<block_sums::spread>({}, a, r, r, r, powers);
+    block.second_ = {powers[1], powers[0], n};
+    block.fourth_ = {powers[3], powers[2], powers[1], powers[0], n};
     *this += block;
   }
 

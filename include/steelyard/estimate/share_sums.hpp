@@ -15,17 +15,15 @@
 namespace steelyard::inline v1::detail {
 
 /// Powers of the weights that fell into one of K cells, cells without overlap:
-/// sum m w, sum m w^2, sum m w^4 and the number of entries.
+/// sum m w, sum m w^2, sum m w^4.
 struct cell_sums {
   double weight = 0.0, second = 0.0, fourth = 0.0;
-  double entries = 0.0;
 
   void add(double count, double w) noexcept {
     double const w2 = w * w;
     weight += count * w;
     second += count * w2;
     fourth += count * (w2 * w2);
-    entries += count;
   }
   void rescale(double factor) noexcept {
     double const square = factor * factor;
@@ -37,7 +35,6 @@ struct cell_sums {
     weight += other.weight;
     second += other.second;
     fourth += other.fourth;
-    entries += other.entries;
     return *this;
   }
 };

@@ -103,7 +103,6 @@ class weighted_column {
     sums.weight = all_.weight - in.weight;
     sums.second = all_.second - in.second;
     sums.fourth = all_.fourth - in.fourth;
-    sums.entries = all_.entries - in.entries;
     return sums;
   }
   [[nodiscard]] error_terms terms(std::size_t n, cell_sums const& in, cell_sums const& out) const {
