@@ -74,6 +74,7 @@ class block {
   void close(how_drawn how) {
     how_ = how;
     totals_ = weight_totals::of(log_weights_, counts_, std::span<double>(weights_.data(), log_weights_.size()));
+    totals_.add_groups(groups_, counts_, weights_);
     totals_.largest = seen_.take(log_weights_, counts_);
     for (std::size_t j = 0; j < kept_; ++j) kept_weights_[j] = weights_[positions_[j]];
     pick(counts_, kept_counts_);

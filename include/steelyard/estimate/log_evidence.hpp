@@ -49,7 +49,9 @@ class log_evidence_estimator {
           [](std::size_t) { return 1.0; }, false, [](std::size_t) { return std::uint32_t{0}; });
     double const value = facts.base + (facts.maximum - facts.base_maximum) +
                          (detail::portable_log(all.top()) - detail::portable_log(all.bottom()));
-    error_terms const terms = facts.influence ? with_base(all, *facts.influence) : all.terms(all.top(), facts.groups > 0.0);
+    error_terms const terms = facts.influence                                ? with_base(all, *facts.influence)
+                              : facts.groups > 0.0 && facts.failed > 0 ? of_replicates(all, facts.groups)
+                                                                       : all.terms(all.top(), facts.groups > 0.0);
     return estimate(value, terms, facts);
   }
 
@@ -72,6 +74,24 @@ class log_evidence_estimator {
       terms.sum_fourth += square * square;
       if (square > terms.largest_square) terms.largest_square = square;
     }
+    return terms;
+  }
+
+  /// Terms from replicates of one size, whose failed runs are no entries: u_g is a replicate's share of the likelihood
+  /// less its share of the samples.
+  static error_terms of_replicates(detail::ratio_sums const& all, double groups) {
+    error_terms terms;
+    auto const take = [&](double u) {
+      terms.sum_squares += u * u;
+      terms.sum_fourth += (u * u) * (u * u);
+      if (u * u > terms.largest_square) terms.largest_square = u * u;
+    };
+    double missing = groups;
+    all.each_top([&](double top) {
+      take(top / all.top() - 1.0 / groups);
+      missing -= 1.0;
+    });
+    for (; missing > 0.5; missing -= 1.0) take(-1.0 / groups);
     return terms;
   }
 

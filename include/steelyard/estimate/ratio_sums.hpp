@@ -129,6 +129,12 @@ class ratio_sums {
     return terms;
   }
 
+  /// act(sum m a) for each group.
+  template <class Act>
+  void each_top(Act act) const {
+    for (std::size_t g = 0; g < groups_.size(); ++g) act(groups_[g][0] + reference_ * groups_[g][1]);
+  }
+
   template <class Self>
   static auto fields(Self& self) {
     return std::tuple_cat(std::tie(self.top_, self.bottom_, self.reference_, self.second_, self.fourth_),

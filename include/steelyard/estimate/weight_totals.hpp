@@ -10,6 +10,7 @@
 #include <steelyard/base/elementary.hpp>
 #include <steelyard/base/kernels.hpp>
 #include <steelyard/estimate/diagnosis.hpp>
+#include <steelyard/estimate/group_sums.hpp>
 #include <steelyard/estimate/run_facts.hpp>
 #include <steelyard/estimate/top_weights.hpp>
 #include <steelyard/weigh/itemised.hpp>
@@ -26,6 +27,7 @@ struct weight_totals {
   double zeros = 0.0;           ///< sum m where w = 0
   double states = 0.0;          ///< entries, whatever their counts
   top_weights largest;          ///< log-weights
+  group_sums<1> groups;         ///< sum m w of each group, where there are groups
 
   /// Fills `weights` with exp(log_weight - maximum), 0 where impossible.
   static weight_totals of(std::span<double const> log_weights, std::span<std::uint64_t const> counts,
@@ -56,6 +58,7 @@ struct weight_totals {
     logs = factor * (logs + by_log * sum);
     sum *= factor;
     squares *= factor * factor;
+    groups.for_each([&](auto& of_one) { of_one[0] *= factor; });
   }
   /// Both sides already relative to one maximum.
   void join(weight_totals const& other) {
@@ -66,14 +69,33 @@ struct weight_totals {
     zeros += other.zeros;
     states += other.states;
     largest += other.largest;
+    groups += other.groups;
+  }
+
+  /// Adds each weight to its group. @pre one group a weight
+  void add_groups(std::span<std::uint32_t const> labels, std::span<std::uint64_t const> counts,
+                  std::span<double const> weights) {
+    for (std::size_t i = 0; i < labels.size(); ++i)
+      groups.push(labels[i], {(counts.empty() ? 1.0 : static_cast<double>(counts[i])) * weights[i]});
+    groups.settle();
+  }
+  /// Largest normalised weight of one group.
+  [[nodiscard]] double largest_group() const noexcept {
+    double most = 0.0, all = 0.0;
+    for (std::size_t g = 0; g < groups.size(); ++g) {
+      most = std::max(most, groups[g][0]);
+      all += groups[g][0];
+    }
+    return all > 0.0 ? most / all : 0.0;
   }
 
   [[nodiscard]] double effective_size() const noexcept { return squares > 0.0 ? sum * (sum / squares) : 0.0; }
 
   template <class Self>
   static auto fields(Self& self) {
-    return std::tie(self.maximum, self.sum, self.squares, self.logs, self.samples, self.zeros, self.states,
-                    top_weights::fields(self.largest));
+    return std::tuple_cat(std::tie(self.maximum, self.sum, self.squares, self.logs, self.samples, self.zeros, self.states,
+                                   top_weights::fields(self.largest)),
+                          group_sums<1>::fields(self.groups));
   }
 };
 

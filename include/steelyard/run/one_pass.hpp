@@ -28,7 +28,6 @@ run_facts pass_facts(weight_totals const& totals, sample_origin const& origin, [
     facts.bound_known = true;
     facts.log_bound = weighter.log_bound();
   }
-  if (facts.groups > 0.0) facts.largest_unit = std::max(facts.largest_unit, 1.0 / facts.groups);
   return facts;
 }
 

@@ -105,7 +105,7 @@ struct sample_origin {
 
   [[nodiscard]] group_facts grouping() const {
     group_facts facts;
-    if (groups.empty()) {
+    if (group_shares.empty()) {
       facts.jackknife_shares = independent_shares(drawn);
       return facts;
     }
@@ -141,7 +141,7 @@ inline run_facts facts_of(weight_totals const& totals, sample_origin const& orig
   facts.how = origin.how;
   facts.groups = static_cast<double>(origin.group_shares.size());
   for (double const share : origin.group_shares) facts.group_share_squares += share * share;
-  facts.largest_unit = totals.sum > 0.0 ? 1.0 / totals.sum : 0.0;
+  facts.largest_unit = facts.groups > 0.0 ? totals.largest_group() : totals.sum > 0.0 ? 1.0 / totals.sum : 0.0;
   facts.far_from_drawn = far_from_drawn(totals, origin);
   facts.influence = origin.influence;
   return facts;

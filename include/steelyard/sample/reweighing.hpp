@@ -163,22 +163,6 @@ std::vector<double> read_states(state_store<X> const& states, sample_columns con
   return values;
 }
 
-/// Largest normalised weight of one group.
-inline double largest_group(sample_columns const& columns, sample_origin const& origin, double maximum) {
-  std::vector<double> sums(origin.group_shares.size());
-  double total = 0.0;
-  for (std::size_t i = 0; i < columns.log_weights.size(); ++i) {
-    if (!(columns.log_weights[i] > impossible)) continue;
-    double const w = portable_exp(columns.log_weights[i] - maximum) *
-                     (origin.counts.empty() ? 1.0 : static_cast<double>(origin.counts[i]));
-    sums[origin.groups[i]] += w;
-    total += w;
-  }
-  double largest = 0.0;
-  for (double const sum : sums) largest = std::max(largest, sum / total);
-  return largest;
-}
-
 /// What was drawn, the largest log-likelihood seen, and what to do.
 inline std::string no_likelihood_text(char const* where, sample_columns const& columns, sample_origin const& origin) {
   std::string seen;

@@ -250,7 +250,6 @@ class weighted_sample {
     facts.bound_known = columns_->bound_known;
     facts.log_bound = columns_->log_bound;
     facts.health = health_;
-    if (facts.groups > 0.0) facts.largest_unit = detail::largest_group(*columns_, *origin_, totals_.maximum);
     return facts;
   }
   /// @endcond
