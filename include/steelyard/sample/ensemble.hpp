@@ -173,7 +173,7 @@ class ensemble {
 
   /// Mean over the slots, with the parent's error plus that of the resampling.
   template <class Readout>
-  auto expectation(Readout const& readout) const {
+  auto expectation(Readout readout) const {
     static_assert(readout_for<Readout, X>, "steelyard: expectation() takes a readout that returns a number, or a "
                                            "std::array of numbers");
     if constexpr (readout_columns<detail::result_t<Readout, X const&>>::size > 1)
@@ -183,7 +183,7 @@ class ensemble {
   }
   /// Share of the slots where an event holds, with the parent's error plus that of the resampling.
   template <class Event>
-  steelyard::estimate probability(Event const& event) const {
+  steelyard::estimate probability(Event event) const {
     static_assert(event_for<Event, X>, "steelyard: probability() takes an event: a readout that returns bool");
     if constexpr (event_for<Event, X>)
       return slot_weights_.empty() ? mean_of(event, true) : as_sample().probability(event);
@@ -235,10 +235,11 @@ class ensemble {
   template <class Readout>
   steelyard::estimate mean_of(Readout const& readout, bool event) const {
     double const k = static_cast<double>(size());
+    detail::instance_t<Readout> own = detail::instance_of<Readout>::make(readout);
     std::vector<double> values(size());
     double mean = 0.0;
     for (std::size_t s = 0; s < size(); ++s) {
-      values[s] = static_cast<double>(detail::call(readout, (*this)[s]));
+      values[s] = static_cast<double>(detail::call(own, (*this)[s]));
       mean += (values[s] - mean) / static_cast<double>(s + 1);
     }
     double squares = 0.0, fourth = 0.0, weighted = 0.0, weighted_fourth = 0.0;

@@ -215,8 +215,12 @@ class weighted_sample {
   /// A readout at every state, in order; 0 at impossible states unless `everywhere`.
   template <class Readout>
   std::vector<double> values(Readout const& readout, bool everywhere = false) const {
-    static_assert(readout_for<Readout, X>, "steelyard: values() takes a readout that returns one number");
-    return values_of(*this, readout, everywhere);
+    constexpr bool one_number = readout_columns<detail::result_t<Readout, X const&>>::size == 1;
+    static_assert(one_number, "steelyard: values() takes a readout that returns one number");
+    if constexpr (one_number)
+      return values_of(*this, readout, everywhere);
+    else
+      return {};
   }
 
   /// k states, drawn in proportion to their weights. @throws bad_argument for k = 0.
