@@ -53,8 +53,10 @@ inline std::pair<double, double> shortest_run(std::span<double const> values, st
       shares.push_back(share);
     }
   }
+  std::uint64_t const rounding = values.size();
   double const part = level * (1.0 - 8.0 * std::numeric_limits<double>::epsilon());
-  auto const wanted = static_cast<std::uint64_t>(part * static_cast<double>(all));
+  auto wanted = static_cast<std::uint64_t>(part * static_cast<double>(all));
+  wanted = wanted > rounding ? wanted - rounding : 1;
   std::pair<double, double> best{distinct.front(), distinct.back()};
   double width = distinct.back() - distinct.front();
   std::uint64_t most = all, held = 0;
@@ -62,7 +64,7 @@ inline std::pair<double, double> shortest_run(std::span<double const> values, st
     while (to < distinct.size() && held < wanted) held += shares[to++];
     if (held < wanted) break;
     double const here = distinct[to - 1] - distinct[from];
-    if (here < width || (here == width && held > most)) {
+    if (here < width || (here == width && held > most + rounding)) {
       best = {distinct[from], distinct[to - 1]};
       width = here;
       most = held;
