@@ -7,7 +7,11 @@
 
 #include <algorithm>
 #include <cmath>
+#include <cstddef>
 #include <cstdint>
+#include <memory>
+#include <span>
+#include <stop_token>
 #include <vector>
 
 #include <steelyard/core.hpp>
@@ -64,6 +68,27 @@ TEST_CASE("toolbox: one pass gives the bits of the kept sample, on any threads a
     CHECK((law::toolbox_bits(law::ask_one_pass_toolbox(problem, {.size = size, .seed = 1, .threads = 2})) == kept));
     CHECK((law::toolbox_bits(law::ask_one_pass_toolbox(problem, {.size = size, .seed = 1, .executor = law::backwards()})) == kept));
   }
+}
+
+TEST_CASE("toolbox: a run stopped, written out and taken up again gives the bits of one that never stopped") {
+  struct memory final : sy::checkpoint_sink {
+    void write(std::span<std::byte const> bytes) override { left.assign(bytes.begin(), bytes.end()); }
+    std::vector<std::byte> read() override { return left; }
+    std::vector<std::byte> left;
+  };
+  auto const sink = std::make_shared<memory>();
+  sy::plan plan{.size = 30'000, .seed = 6, .checkpoint = sink};
+  std::stop_source stop;
+  plan.token = stop.get_token();
+  plan.progress = [&](sy::progress_report const& p) {
+    if (p.drawn >= 6000) stop.request_stop();
+  };
+  auto const part = law::ask_one_pass_toolbox(problem, plan);
+  CHECK(part.drawn() < 30'000);
+  CHECK_FALSE(sink->left.empty());
+  sy::plan const rest{.size = 30'000, .seed = 6, .checkpoint = sink};
+  auto const whole = law::toolbox_bits(law::ask_one_pass_toolbox(problem, {.size = 30'000, .seed = 6}));
+  CHECK((law::toolbox_bits(law::ask_one_pass_toolbox(problem, rest)) == whole));
 }
 
 TEST_CASE("toolbox: the tail index does not depend on threads, order or keeping") {

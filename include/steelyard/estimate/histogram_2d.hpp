@@ -6,6 +6,7 @@
 #include <optional>
 #include <span>
 #include <tuple>
+#include <type_traits>
 #include <utility>
 #include <vector>
 
@@ -97,17 +98,27 @@ class histogram_2d_estimator {
   detail::grouped_cells groups_;
 };
 
+namespace detail {
+
+inline std::optional<bins> given_edges(bins edges) { return edges; }
+inline std::optional<bins> given_edges(automatic_bins_t) { return std::nullopt; }
+template <class Edges>
+inline constexpr bool are_edges_v = std::is_convertible_v<Edges, bins> || std::is_same_v<Edges, automatic_bins_t>;
+
+}  // namespace detail
+
 /// Weighted histogram of two readouts over given bins: `equal_bins`, `log_bins`, `bins{edges}`; or, for either of
 /// them, `automatic_bins`.
 template <class First, class Second, class X = automatic_bins_t, class Y = automatic_bins_t>
 [[nodiscard]] auto histogram_2d(First first, Second second, X x = {}, Y y = {}) {
-  auto const given = [](auto const& edges) -> std::optional<bins> {
-    if constexpr (std::is_same_v<std::remove_cvref_t<decltype(edges)>, automatic_bins_t>)
-      return std::nullopt;
-    else
-      return edges;
-  };
-  return histogram_2d_estimator<First, Second>(std::move(first), std::move(second), given(x), given(y));
+  constexpr bool fine = detail::are_edges_v<X> && detail::are_edges_v<Y>;
+  static_assert(fine, "steelyard: histogram_2d() takes bins for each readout: equal_bins(lower, upper, n), log_bins, "
+                      "bins{edges} or automatic_bins");
+  if constexpr (fine)
+    return histogram_2d_estimator<First, Second>(std::move(first), std::move(second), detail::given_edges(std::move(x)),
+                                                 detail::given_edges(std::move(y)));
+  else
+    return histogram_2d_estimator<First, Second>(std::move(first), std::move(second), std::nullopt, std::nullopt);
 }
 
 }  // namespace steelyard::inline v1

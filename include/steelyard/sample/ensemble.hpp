@@ -156,6 +156,13 @@ class ensemble {
 
   /// For each slot: which state of the parent it is; after a one-pass resample, which stream.
   [[nodiscard]] std::span<std::size_t const> indices() const noexcept { return indices_; }
+  /// The stream that a slot's state was drawn from: `pipe.replay(plan, sample_index(slot))` makes it again.
+  /// @throws bad_argument for slot >= size().
+  std::uint64_t sample_index(std::size_t slot) const {
+    if (slot >= size())
+      throw bad_argument("sample_index: there is no slot " + std::to_string(slot) + " among " + std::to_string(size()));
+    return parent_ ? parent_->sample_index(indices_[slot]) : indices_[slot];
+  }
   /// For each slot, after a draw without replacement: an unbiased estimate of its state's normalised weight, 0 for
   /// states not drawn. They add up to about one. Empty after a draw with replacement, where slots are equal.
   [[nodiscard]] std::span<double const> weights() const noexcept { return slot_weights_; }
@@ -174,18 +181,19 @@ class ensemble {
   /// Mean over the slots, with the parent's error plus that of the resampling.
   template <class Readout>
   auto expectation(Readout readout) const {
-    static_assert(readout_for<Readout, X>, "steelyard: expectation() takes a readout that returns a number, or a "
-                                           "std::array of numbers");
-    if constexpr (readout_columns<detail::result_t<Readout, X const&>>::size > 1)
+    constexpr std::size_t columns = readout_columns<detail::result_t<Readout, X const&>>::size;
+    static_assert(columns > 0, "steelyard: expectation() takes a readout that returns a number, or a std::array of numbers");
+    if constexpr (columns > 1)
       return as_sample().expectation(readout);
-    else if constexpr (readout_for<Readout, X>)
+    else if constexpr (columns == 1)
       return slot_weights_.empty() ? mean_of(readout, false) : as_sample().expectation(readout);
   }
   /// Share of the slots where an event holds, with the parent's error plus that of the resampling.
   template <class Event>
   steelyard::estimate probability(Event event) const {
-    static_assert(event_for<Event, X>, "steelyard: probability() takes an event: a readout that returns bool");
-    if constexpr (event_for<Event, X>)
+    constexpr bool fine = event_for<Event, X>;
+    static_assert(fine, "steelyard: probability() takes an event: a readout that returns bool");
+    if constexpr (fine)
       return slot_weights_.empty() ? mean_of(event, true) : as_sample().probability(event);
     else
       return {};

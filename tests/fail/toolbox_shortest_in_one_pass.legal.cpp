@@ -1,0 +1,9 @@
+#include <steelyard/core.hpp>
+
+int main() {
+  auto sampler = [](steelyard::draws& draws) { return draws.uniform(); };
+  auto weighter = [](double x) { return steelyard::likelihood{x}; };
+  steelyard::pipeline pipe{sampler, weighter};
+  auto itself = [](double x) { return x; };
+  pipe.run({.size = 1000}).estimate(steelyard::shortest_interval(itself, 0.9));
+}
