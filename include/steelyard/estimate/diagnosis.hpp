@@ -97,7 +97,7 @@ class diagnosis {
     double const drawn = static_cast<double>(n_.drawn);
     if (n_.effective_size < 50.0)
       say(finding_kind::few_effective,
-          "The weights are worth only " + short_number(n_.effective_size) + " equal draws out of " +
+          "The weights are worth " + (n_.effective_size < 1.5 ? "no more than one draw" : "only " + short_number(n_.effective_size) + " equal draws") + " out of " +
               short_number(drawn) + ": draw more, or use a tempered run if the reading is this sharp. " + size_advice());
     if (n_.tail_known && n_.tail_index > heavy_from)
       say(finding_kind::heavy_tail,
@@ -146,8 +146,9 @@ class diagnosis {
 /// Plain sentences: what the weights carry, then each finding.
 [[nodiscard]] inline std::string to_string(diagnosis const& d) {
   using detail::short_number;
-  std::string text = std::to_string(d.drawn()) + " samples are worth " + short_number(d.effective_size()) +
-                     " equal ones; the heaviest holds " + short_number(100.0 * d.largest_share()) + " % of the weight.";
+  std::string text = std::to_string(d.drawn()) + " samples are worth " +
+                     (d.effective_size() < 1.5 ? "no more than one" : short_number(d.effective_size()) + " equal ones") +
+                     "; the heaviest holds " + short_number(100.0 * d.largest_share()) + " % of the weight.";
   text += d.verdict() == verdict::sound      ? " The weights can carry questions."
           : d.verdict() == verdict::strained ? " The weights are strained: take answers as orders of magnitude."
                                              : " The weights are broken: do not use the answers.";

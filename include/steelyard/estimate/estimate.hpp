@@ -160,6 +160,12 @@ class estimate {
   double bound_size_ = 0.0;
 };
 
+/// "0.30786 +- 0.00044": value and standard error, to two digits of the error, in another unit where a factor is given
+/// (100 for percent).
+[[nodiscard]] inline std::string figures(estimate const& e, double factor = 1.0) {
+  return detail::rounded_to_error(e.value * factor, e.standard_error * factor);
+}
+
 /// One sentence: value and standard error to two digits of it, then the verdict.
 [[nodiscard]] inline std::string to_string(estimate const& e) {
   if (e.never_seen() || e.always_seen()) {

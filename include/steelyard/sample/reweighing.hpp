@@ -179,4 +179,27 @@ inline std::string no_likelihood_text(char const* where, sample_columns const& c
          "; check the likelihood, draw from a wider prior, or use a tempered run";
 }
 
+/// Where the weights carry little and there are several readings: the one that
+/// alone leaves least of the effective size, in a sentence.
+inline std::vector<finding> sharpest_reading(sample_columns const& columns, double effective_size) {
+  std::vector<finding> findings;
+  if (effective_size >= 50.0 || columns.names.size() < 2) return findings;
+  std::vector<double> weights(columns.log_weights.size());
+  double least = 0.0;
+  std::size_t which = columns.names.size();
+  for (std::size_t k = 0; k < columns.names.size(); ++k) {
+    std::span<double const> const logs = columns.column(k);
+    auto const sums = weights_from_logs(logs, block_maximum(logs), weights);
+    double const alone = sums.sum_squares > 0.0 ? sums.sum * (sums.sum / sums.sum_squares) : 0.0;
+    if (which < columns.names.size() && alone >= least) continue;
+    least = alone;
+    which = k;
+  }
+  findings.push_back({finding_kind::few_effective,
+                      "Reading '" + columns.names[which] + "' is the sharpest: weighed by it alone, the states are worth " +
+                          (least < 1.5 ? "no more than one" : "only " + short_number(least) + " equal ones") +
+                          ". Check its value, its unit and its error before drawing more."});
+  return findings;
+}
+
 }  // namespace steelyard::inline v1::detail

@@ -239,8 +239,10 @@ class weighted_sample {
     totals.take(0, origin_->blocks(size()), origin_->execute, *pool);
     totals_ = totals.finish()->totals;
     if (!(totals_.maximum > detail::impossible)) throw no_likelihood(detail::no_likelihood_text(where, *columns_, *origin_));
+    std::vector<finding> findings = origin_->findings;
+    for (finding& each : detail::sharpest_reading(*columns_, totals_.effective_size())) findings.push_back(std::move(each));
     health_ = std::make_shared<steelyard::diagnosis const>(
-        detail::diagnosis_of(totals_, *origin_, origin_->findings, columns_->bound_known));
+        detail::diagnosis_of(totals_, *origin_, std::move(findings), columns_->bound_known));
   }
   [[nodiscard]] std::shared_ptr<detail::state_store<X> const> const& store() const noexcept { return states_; }
   [[nodiscard]] detail::sample_columns const& columns() const noexcept { return *columns_; }
