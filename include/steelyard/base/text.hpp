@@ -46,7 +46,8 @@ inline std::string rounded_to_error(double value, double error) {
     std::string const lead = number_with(value, std::chars_format::scientific, 1);
     std::from_chars(lead.data() + lead.find('e') + (lead[lead.find('e') + 1] == '+' ? 2 : 1), lead.data() + lead.size(), top);
     int const kept = top - exponent + 1;
-    return number_with(value, std::chars_format::scientific, kept < 0 ? 0 : kept > 17 ? 17 : kept) + " +- " + digits;
+    if (kept > 15) return plain_number(value) + " +- " + digits;
+    return number_with(value, std::chars_format::scientific, kept < 0 ? 0 : kept) + " +- " + digits;
   }
   return number_with(value, std::chars_format::fixed, places < 0 ? 0 : places) + " +- " +
          number_with(error, std::chars_format::fixed, places < 0 ? 0 : places);
