@@ -11,6 +11,7 @@
 
 #include <doctest/doctest.h>
 
+#include <steelyard/instrument/checks.hpp>
 #include <steelyard/instrument/count_laws.hpp>
 #include <steelyard/instrument/count_tails.hpp>
 #include <steelyard/instrument/counting.hpp>
@@ -67,7 +68,8 @@ TEST_CASE("a reading is a weighter: value, readout and instrument put together")
   static_assert(!sy::weighter_for<decltype(gauge), double>);
 
   auto const nameless = sy::reading(2.31, &tank::level, sy::normal_noise(0.05));
-  CHECK(nameless.name().empty());
+  CHECK(nameless.name() == "reading");
+  CHECK(sy::reading(2.31, level, sy::normal_noise(0.05)).name() == "level");
   CHECK(nameless(state).value == gauge(state).value);
   // other number types of value and truth
   CHECK(sy::reading("n", 3u, &tank::inflow, sy::poisson_count())(state).value ==
@@ -203,6 +205,9 @@ TEST_CASE("readings an instrument could never show are refused, when a reading i
   refused(-1.0, sy::with_outliers(sy::lognormal_noise(1.0), 0.1, sy::anywhere(0.0, 10.0)),
           "as outliers numbers from 0 to 10");
   fine(12.0, sy::with_outliers(sy::lognormal_noise(1.0), 0.1, sy::anywhere(0.0, 10.0)));
+  auto const few_or_many = sy::with_outliers(sy::binomial_count(10), 0.1, sy::poisson_count());
+  fine(15, few_or_many);
+  refused(1.5, few_or_many, "with_outliers: a reading of 1.5");
   refused(std::array{1.0, not_a_number}, sy::correlated_noise({{1.0, 0.0}, {0.0, 1.0}}),
           "correlated_noise: reading 1 is NaN");
   refused(std::array{1.0, not_a_number}, sy::with_offset(sy::normal_noise(1.0), 1.0), "NaN");

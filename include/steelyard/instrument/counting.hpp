@@ -29,17 +29,10 @@ class counting : public scalar_instrument<Self> {
   [[nodiscard]] std::string shows() const { return "whole numbers from 0 up"; }
   [[nodiscard]] double scale() const { return 1.0; }
 
-  void check(shown const& reading) const {
-    scalar_instrument<Self>::check(reading);
-    double const x = reading.lower();
-    bool possible = true;
-    switch (reading.what()) {
-      case shown::kind::number: possible = x == std::floor(x); break;
-      case shown::kind::within: possible = std::ceil(x) <= std::floor(reading.upper()); break;
-      case shown::kind::under:
-      case shown::kind::over: break;
-    }
-    if (!possible) this->refuse(reading);
+  [[nodiscard]] bool can_show(shown const& reading) const {
+    bool const limit = reading.what() == shown::kind::under || reading.what() == shown::kind::over;
+    return scalar_instrument<Self>::can_show(reading) &&
+           (limit || std::ceil(reading.lower()) <= std::floor(reading.upper()));
   }
 
   [[nodiscard]] double log_density(double x, double truth) const {

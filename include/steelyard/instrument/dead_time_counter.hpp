@@ -69,12 +69,15 @@ class dead_time_instrument : public detail::counting<dead_time_instrument> {
   /// log P(from < Gamma(k) <= to): the k-th event falls in the last dead time.
   static double log_last(double k, double from, double to) {
     if (!(to > from)) return detail::impossible;
+    double const middle = 0.5 * (from + to), half = 0.5 * (to - from);
+    auto const density = [k](double x) { return detail::log_poisson(k - 1.0, x); };
+    if (half < 0.1 * middle && half * std::abs((k - 1.0) / middle - 1.0) < 0.5)
+      return detail::log_integral(density, middle, half);
     bool const upper = from > k;
     double const more = upper ? detail::log_gamma_above(k, from) : detail::log_gamma_below(k, to);
     double const less = upper ? detail::log_gamma_above(k, to) : detail::log_gamma_below(k, from);
     if (less - more < -0.1) return detail::log_difference(more, less);
-    return detail::log_integral([k](double x) { return detail::log_poisson(k - 1.0, x); }, 0.5 * (from + to),
-                                0.5 * (to - from));
+    return detail::log_integral(density, middle, half);
   }
 
   counter_setting setting_;

@@ -5,7 +5,7 @@
 #include <cstddef>
 
 #include <steelyard/base/elementary.hpp>
-#include <steelyard/weigh/itemised.hpp>
+#include <steelyard/base/lanes.hpp>
 
 // Arithmetic on logarithms of probabilities, `impossible` being the logarithm
 // of 0. No infinities, whatever the flags.

@@ -70,6 +70,7 @@ inline double log_normal_within(cell const& c) noexcept {
       now = next;
       factorial *= static_cast<double>(n + 1);
       if (n % 2 == 1) sum += now / (factorial * static_cast<double>(n + 2));
+      if (std::abs(now) + std::abs(before) < 1e-17 * factorial) break;
     }
     return portable_log(2.0 * h) + log_normal_density(m) + portable_log(sum);
   }

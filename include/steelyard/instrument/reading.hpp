@@ -3,13 +3,13 @@
 
 #include <array>
 #include <cstddef>
-#include <functional>
 #include <string>
 #include <string_view>
 #include <type_traits>
 #include <utility>
 
 #include <steelyard/base/error.hpp>
+#include <steelyard/base/functional.hpp>
 #include <steelyard/base/text.hpp>
 #include <steelyard/instrument/instrument_for.hpp>
 #include <steelyard/instrument/shown.hpp>
@@ -58,7 +58,7 @@ double size_of_reading(Value const& value) {
 /// What was read, where in the state it was read, and how the instrument errs:
 /// a weighter, called with a state.
 ///   sy::reading("gauge", 2.31, &tank::level, sy::normal_noise(0.05))
-/// Without a name it weighs alone; in `together` each needs its own.
+/// Without a name it bears that of its readout, where that has one.
 /// @param value   a number, `under`, `over`, `within`, or what else the instrument shows
 /// @param where   readout of the true value from a state
 /// @throws bad_argument where the instrument could never show the value.
@@ -68,6 +68,7 @@ class reading {
  public:
   reading(std::string name, Value value, Readout where, Instrument instrument)
       : name_(std::move(name)), value_(std::move(value)), where_(std::move(where)), instrument_(std::move(instrument)) {
+    if (name_.empty()) name_ = name_of(where_);
     if constexpr (requires { typename Instrument::truth_type; }) {
       using truth = typename Instrument::truth_type;
       static_assert(instrument_for<Instrument, Value, truth> || instrument_for<Instrument, Value, Value>,
@@ -103,7 +104,7 @@ class reading {
                         "see the instrument's documentation for the true value it takes");
     if constexpr (fits) {
       try {
-        return instrument_.score(value_, static_cast<truth>(std::invoke(where_, state)));
+        return instrument_.score(value_, static_cast<truth>(detail::call(where_, state)));
       } catch (bad_readout const& problem) {
         throw bad_readout(prefix() + problem.what());
       }
@@ -141,7 +142,7 @@ class reading {
     using found = std::remove_cvref_t<std::invoke_result_t<Readout const&, State const&>>;
     if constexpr (std::is_arithmetic_v<found> && !std::is_same_v<found, bool>) {
       double const size = detail::size_of_reading(value_);
-      double const truth = detail::size_of_reading(static_cast<double>(std::invoke(where_, state)));
+      double const truth = detail::size_of_reading(static_cast<double>(detail::call(where_, state)));
       if (size > 0.0 && truth > 0.0 && (size >= 1e12 * truth || truth >= 1e12 * size))
         return prefix() + "a value of " + detail::short_number(size) + " and a true value of " +
                detail::short_number(truth) + " are 12 orders of magnitude or more apart; check the unit";
@@ -150,8 +151,14 @@ class reading {
   }
 
  private:
+  static std::string name_of(Readout const& where) {
+    if constexpr (requires { std::string(std::string_view(where.name())); })
+      return std::string(std::string_view(where.name()));
+    else
+      return "reading";
+  }
   [[nodiscard]] std::string prefix() const {
-    return name_.empty() ? std::string("reading: ") : "reading '" + name_ + "': ";
+    return name_ == "reading" ? std::string("reading: ") : "reading '" + name_ + "': ";
   }
 
   std::string name_;

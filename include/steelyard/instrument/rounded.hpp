@@ -41,16 +41,12 @@ class rounded_instrument
   [[nodiscard]] double scale() const { return inner_.scale(); }
   [[nodiscard]] truth_t admit(truth_t const& truth) const { return inner_.admit(truth); }
 
-  void check(shown const& reading) const {
-    base::check(reading);
-    bool possible = true;
-    if (reading.what() == shown::kind::number) {
-      double const steps = reading.lower() / step_, off = steps - std::floor(steps + 0.5);
-      possible = std::abs(off) <= slack + 1e-15 * std::abs(steps);
-    } else if (reading.what() == shown::kind::within) {
-      possible = first_from(reading.lower()) <= last_to(reading.upper());
-    }
-    if (!possible) this->refuse(reading);
+  [[nodiscard]] bool can_show(shown const& reading) const {
+    if (!base::can_show(reading)) return false;
+    if (reading.what() == shown::kind::within) return first_from(reading.lower()) <= last_to(reading.upper());
+    if (reading.what() != shown::kind::number) return true;
+    double const steps = reading.lower() / step_, off = steps - std::floor(steps + 0.5);
+    return std::abs(off) <= slack + 1e-15 * std::abs(steps);
   }
 
   [[nodiscard]] double log_density(double x, truth_t const& truth) const {
@@ -104,12 +100,12 @@ class rounded_instrument
 /// @param instrument anything made here that shows one number and is not rounded already
 /// @throws bad_argument unless step is finite and above 0
 template <class Instrument>
-rounded_instrument<Instrument> rounded(double step, Instrument instrument) {
+auto rounded(double step, Instrument instrument) {
   static_assert(detail::scalar<Instrument>, "steelyard: rounded(step, instrument) needs an instrument that shows one "
                                             "number: derive yours from sy::scalar_instrument");
   if constexpr (detail::scalar<Instrument>) {
     static_assert(Instrument::scale_kind != scale_of::steps, "steelyard: this instrument is rounded already");
-    return {step, -0.5 * step, std::move(instrument)};
+    return rounded_instrument<Instrument>(step, -0.5 * step, std::move(instrument));
   }
 }
 
@@ -117,12 +113,12 @@ rounded_instrument<Instrument> rounded(double step, Instrument instrument) {
 /// 0.1 says "2.3 to 2.4" (a clock, a counter, an integer conversion of positive
 /// numbers). Otherwise as `rounded`.
 template <class Instrument>
-rounded_instrument<Instrument> rounded_down(double step, Instrument instrument) {
+auto rounded_down(double step, Instrument instrument) {
   static_assert(detail::scalar<Instrument>, "steelyard: rounded_down(step, instrument) needs an instrument that shows "
                                             "one number: derive yours from sy::scalar_instrument");
   if constexpr (detail::scalar<Instrument>) {
     static_assert(Instrument::scale_kind != scale_of::steps, "steelyard: this instrument is rounded already");
-    return {step, 0.0, std::move(instrument)};
+    return rounded_instrument<Instrument>(step, 0.0, std::move(instrument));
   }
 }
 

@@ -9,8 +9,8 @@
 #include <steelyard/draw/draws.hpp>
 #include <steelyard/instrument/cell.hpp>
 #include <steelyard/instrument/checks.hpp>
+#include <steelyard/instrument/log_sum.hpp>
 #include <steelyard/instrument/shown.hpp>
-#include <steelyard/weigh/itemised.hpp>
 #include <steelyard/weigh/likelihood.hpp>
 
 namespace steelyard::inline v1 {
@@ -43,7 +43,7 @@ class scalar_instrument {
   /// @throws bad_argument for a reading that can never be shown,
   ///         bad_readout for a truth that makes no sense.
   log_likelihood score(shown const& reading, Truth const& truth) const {
-    self().check(reading);
+    check(reading);
     return log_likelihood{log_score(reading, self().admit(truth))};
   }
 
@@ -53,15 +53,21 @@ class scalar_instrument {
 
   /// @throws bad_argument for a reading that can never be shown, whatever the truth.
   void check(shown const& reading) const {
+    if (self().can_show(reading)) return;
+    throw bad_argument(std::string(self().name()) + ": a reading of " + reading.text() +
+                       " can never be shown; it shows " + self().shows());
+  }
+
+  /// Whether it can show this for some truth; by default what lies between the next two.
+  [[nodiscard]] bool can_show(shown const& reading) const {
     double const low = self().lowest_reading(), high = self().highest_reading();
-    bool possible = true;
     switch (reading.what()) {
-      case shown::kind::number: possible = reading.lower() >= low && reading.lower() <= high; break;
-      case shown::kind::under: possible = reading.upper() > low; break;
-      case shown::kind::over: possible = reading.lower() < high; break;
-      case shown::kind::within: possible = reading.upper() >= low && reading.lower() <= high; break;
+      case shown::kind::under: return reading.upper() > low;
+      case shown::kind::over: return reading.lower() < high;
+      case shown::kind::within:
+      case shown::kind::number: break;
     }
-    if (!possible) refuse(reading);
+    return reading.upper() >= low && reading.lower() <= high;
   }
 
   /// The smallest and the largest number it can show, whatever the truth.
@@ -76,11 +82,6 @@ class scalar_instrument {
 
  protected:
   scalar_instrument() = default;
-
-  [[noreturn]] void refuse(shown const& reading) const {
-    throw bad_argument(std::string(self().name()) + ": a reading of " + reading.text() +
-                       " can never be shown; it shows " + self().shows());
-  }
 
  private:
   [[nodiscard]] Self const& self() const { return static_cast<Self const&>(*this); }
@@ -99,7 +100,10 @@ class scalar_instrument {
 namespace detail {
 
 template <class I>
-concept scalar = std::derived_from<I, scalar_instrument<I, typename I::truth_type>>;
+inline constexpr bool scalar = requires { typename I::truth_type; };
+template <class I>
+  requires requires { typename I::truth_type; }
+inline constexpr bool scalar<I> = std::derived_from<I, scalar_instrument<I, typename I::truth_type>>;
 
 }  // namespace detail
 

@@ -17,7 +17,6 @@ template <class Usual, class Wide>
 class outlier_instrument
     : public scalar_instrument<outlier_instrument<Usual, Wide>, typename Usual::truth_type> {
   using truth_t = typename Usual::truth_type;
-  using base = scalar_instrument<outlier_instrument<Usual, Wide>, truth_t>;
 
  public:
   static constexpr scale_of scale_kind = Usual::scale_kind;
@@ -36,11 +35,8 @@ class outlier_instrument
   [[nodiscard]] double scale() const { return usual_.scale(); }
   [[nodiscard]] truth_t admit(truth_t const& truth) const { return wide_.admit(usual_.admit(truth)); }
 
-  void check(shown const& reading) const {
-    if constexpr (scale_kind == scale_of::continuous)
-      base::check(reading);
-    else
-      usual_.check(reading);  // whole numbers or steps: both parts show the same ones
+  [[nodiscard]] bool can_show(shown const& reading) const {
+    return usual_.can_show(reading) || wide_.can_show(reading);
   }
 
   [[nodiscard]] double log_density(double x, truth_t const& truth) const {
@@ -79,7 +75,7 @@ class outlier_instrument
 /// size; better round last: rounded(step, with_outliers(...))).
 /// @throws bad_argument unless share lies between 0 and 1
 template <class Usual, class Wide>
-outlier_instrument<Usual, Wide> with_outliers(Usual instrument, double share, Wide wide) {
+auto with_outliers(Usual instrument, double share, Wide wide) {
   static_assert(detail::scalar<Usual> && detail::scalar<Wide>,
                 "steelyard: with_outliers(instrument, share, wide) needs instruments that show one number: derive "
                 "yours from sy::scalar_instrument");
@@ -90,7 +86,7 @@ outlier_instrument<Usual, Wide> with_outliers(Usual instrument, double share, Wi
     static_assert(std::is_same_v<typename Usual::truth_type, typename Wide::truth_type>,
                   "steelyard: with_outliers(instrument, share, wide): the two take different true values; put a drawn "
                   "offset outside: with_offset(with_outliers(...), sd)");
-    return {std::move(instrument), share, std::move(wide)};
+    return outlier_instrument<Usual, Wide>(std::move(instrument), share, std::move(wide));
   }
 }
 
