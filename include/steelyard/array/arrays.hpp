@@ -1,15 +1,20 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
+#include <array>
 #include <cstddef>
 #include <memory>
 #include <span>
+#include <string>
 #include <tuple>
 #include <type_traits>
 #include <utility>
 #include <vector>
 
 #include <steelyard/array/xtensor.hpp>
+#include <steelyard/base/error.hpp>
+#include <steelyard/estimate/covariance.hpp>
+#include <steelyard/estimate/histogram_2d_result.hpp>
 #include <steelyard/estimate/histogram_result.hpp>
 #include <steelyard/sample/ensemble.hpp>
 #include <steelyard/sample/weigh.hpp>
@@ -37,6 +42,14 @@ inline constexpr std::size_t rank_of<E> = std::tuple_size<typename E::shape_type
 template <class Range>
   requires(xt::is_xexpression<std::remove_cvref_t<Range>>::value)
 inline constexpr bool weighed_as_array<Range> = true;
+
+template <class Entry>
+xt::xtensor<double, 2> filled(std::size_t rows, std::size_t columns, Entry entry) {
+  xt::xtensor<double, 2> all = xt::xtensor<double, 2>::from_shape({rows, columns});
+  for (std::size_t i = 0; i < rows; ++i)
+    for (std::size_t j = 0; j < columns; ++j) all(i, j) = entry(i, j);
+  return all;
+}
 
 }  // namespace detail
 
@@ -73,6 +86,39 @@ struct readout_columns<xt::xtensor_fixed<T, Shape, L>> {
   xt::xtensor<double, 1> all = xt::xtensor<double, 1>::from_shape({histogram.size() + 1});
   for (std::size_t b = 0; b <= histogram.size(); ++b) all(b) = histogram.edge(b);
   return all;
+}
+
+/// Densities of a histogram in two dimensions, and their standard errors: x-bins by y-bins.
+[[nodiscard]] inline xt::xtensor<double, 2> densities(histogram_2d_result const& histogram) {
+  return detail::filled(histogram.x_size(), histogram.y_size(),
+                        [&](std::size_t i, std::size_t j) { return histogram.density(i, j).value; });
+}
+[[nodiscard]] inline xt::xtensor<double, 2> density_errors(histogram_2d_result const& histogram) {
+  return detail::filled(histogram.x_size(), histogram.y_size(),
+                        [&](std::size_t i, std::size_t j) { return histogram.density(i, j).standard_error; });
+}
+/// A covariance matrix, and the standard error of each entry: N by N.
+template <std::size_t N>
+[[nodiscard]] xt::xtensor<double, 2> covariances(covariance_result<N> const& matrix) {
+  return detail::filled(N, N, [&](std::size_t i, std::size_t j) { return matrix(i, j).value; });
+}
+template <std::size_t N>
+[[nodiscard]] xt::xtensor<double, 2> covariance_errors(covariance_result<N> const& matrix) {
+  return detail::filled(N, N, [&](std::size_t i, std::size_t j) { return matrix(i, j).standard_error; });
+}
+
+/// A readout of N columns of a row, from `first` on: for samples whose states are rows of an array.
+/// It throws bad_readout on a row that is too short.
+template <std::size_t N>
+[[nodiscard]] auto row_columns(std::size_t first = 0) {
+  return [first](std::span<double const> row) {
+    if (row.size() < first + N)
+      throw bad_readout("row_columns: a row of " + std::to_string(row.size()) + " numbers has no columns " +
+                        std::to_string(first) + " to " + std::to_string(first + N - 1));
+    std::array<double, N> part{};
+    for (std::size_t k = 0; k < N; ++k) part[k] = row[first + k];
+    return part;
+  };
 }
 
 /// States that are numbers, as an array.
