@@ -2,6 +2,7 @@
 #pragma once
 
 #include <cstddef>
+#include <cstdint>
 #include <limits>
 #include <span>
 
@@ -43,6 +44,26 @@ inline void add_weights(isa width, double const* logs, double maximum, double* w
   plain::add_weights(logs, maximum, weights, groups, lanes);
 }
 
+inline void add_values(isa width, double const* values, std::size_t groups, double* lanes) noexcept {
+#if !defined(STEELYARD_PLAIN_KERNELS) && defined(__GNUC__) && defined(__x86_64__)
+  if (width == isa::avx512) return avx512::add_values(values, groups, lanes);
+  if (width == isa::avx2) return avx2::add_values(values, groups, lanes);
+  if (width == isa::sse2) return sse2::add_values(values, groups, lanes);
+#endif
+  static_cast<void>(width);
+  plain::add_values(values, groups, lanes);
+}
+
+inline void flag_not_finite(isa width, double const* values, std::size_t groups, std::uint64_t* flags) noexcept {
+#if !defined(STEELYARD_PLAIN_KERNELS) && defined(__GNUC__) && defined(__x86_64__)
+  if (width == isa::avx512) return avx512::flag_not_finite(values, groups, flags);
+  if (width == isa::avx2) return avx2::flag_not_finite(values, groups, flags);
+  if (width == isa::sse2) return sse2::flag_not_finite(values, groups, flags);
+#endif
+  static_cast<void>(width);
+  plain::flag_not_finite(values, groups, flags);
+}
+
 inline void raise_maximum(isa width, double const* values, std::size_t groups, double* lanes) noexcept {
 #if !defined(STEELYARD_PLAIN_KERNELS) && defined(__GNUC__) && defined(__x86_64__)
   if (width == isa::avx512) return avx512::raise_maximum(values, groups, lanes);
@@ -65,6 +86,40 @@ inline void raise_maximum(isa width, double const* values, std::size_t groups, d
   for (double const v : lanes) top = v > top ? v : top;
   for (double const v : values.subspan(groups * virtual_lanes)) top = v > top ? v : top;
   return (opaque_bits(top) & ~sign_bit) == 0 ? 0.0 : top;  // one zero, whichever came first
+}
+
+/// Whether no value is infinite or NaN, whatever the compiler was told about them.
+/// Cost  one read of the values.
+[[nodiscard]] inline bool all_finite(std::span<double const> values, isa width = widest_isa()) noexcept {
+  double const* from = values.data();
+#if defined(__GNUC__)
+  __asm__("" : "+r"(from) : : "memory");
+#endif
+  std::uint64_t flags[virtual_lanes] = {};
+  std::size_t const groups = values.size() / virtual_lanes;
+  flag_not_finite(width, from, groups, flags);
+  std::uint64_t any = 0;
+  for (std::uint64_t const each : flags) any |= each;
+  bool finite = (any & sign_bit) == 0;
+  for (std::size_t k = groups * virtual_lanes; k < values.size(); ++k) finite = finite && is_finite(from[k]);
+  return finite;
+}
+
+/// Sum of all values: eight lanes over 1024 elements, those pairwise.
+/// Cost  one read of the values.
+[[nodiscard]] inline double total_of(std::span<double const> values, isa width = widest_isa()) noexcept {
+  constexpr std::size_t chunk = 1024;
+  pairwise_sum<double> sums;
+  for (std::size_t first = 0; first < values.size(); first += chunk) {
+    std::size_t const count = values.size() - first < chunk ? values.size() - first : chunk;
+    double lanes[virtual_lanes] = {};
+    std::size_t const groups = count / virtual_lanes;
+    add_values(width, values.data() + first, groups, lanes);
+    for (std::size_t k = groups * virtual_lanes; k < count; ++k)
+      lanes[k % virtual_lanes] = plus(lanes[k % virtual_lanes], values[first + k]);
+    sums.add(lane_total(lanes));
+  }
+  return sums.total();
 }
 
 /// Weights of a block from their logarithms, relative to a maximum, and their sums.

@@ -183,6 +183,30 @@ inline void add_weights(double const* logs, double maximum, double* weights, std
   }
 }
 
+/// lanes[0..7] += v, for whole groups of eight.
+inline void add_values(double const* values, std::size_t groups, double* lanes) noexcept {
+  for (std::size_t lane = 0; lane < 8; lane += width) {
+    vec sum; load(lanes + lane, sum);
+    for (std::size_t group = 0; group < groups; ++group) {
+      vec v; load(values + 8 * group + lane, v);
+      add(sum, v, sum);
+    }
+    store(sum, lanes + lane);
+  }
+}
+
+/// flags[0..7] gets its sign bit where a value of its lane is infinite or not a number, in whole groups of eight.
+inline void flag_not_finite(double const* values, std::size_t groups, std::uint64_t* flags) noexcept {
+  for (std::size_t lane = 0; lane < 8; lane += width) {
+    uvec any; __builtin_memcpy(&any, flags + lane, sizeof any);
+    for (std::size_t group = 0; group < groups; ++group) {
+      uvec bits; __builtin_memcpy(&bits, values + 8 * group + lane, sizeof bits);
+      any = any | ((bits & ~sign_bit) + 0x0010000000000000u);
+    }
+    __builtin_memcpy(flags + lane, &any, sizeof any);
+  }
+}
+
 /// Raises lanes[0..7] to the largest of their elements in whole groups of eight.
 inline void raise_maximum(double const* values, std::size_t groups, double* lanes) noexcept {
   for (std::size_t lane = 0; lane < 8; lane += width) {

@@ -1,10 +1,16 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
+#include <bit>
 #include <cstddef>
+#include <cstdint>
+#include <cstring>
 #include <span>
 #include <vector>
 
+#include <steelyard/base/algorithm.hpp>
+#include <steelyard/base/exponential_words.hpp>
+#include <steelyard/base/sums.hpp>
 #include <steelyard/draw/draws.hpp>
 #include <steelyard/sample/positions.hpp>
 
@@ -13,12 +19,34 @@ namespace steelyard::inline v1::detail {
 /// Positions of k independent draws in rising order: sorted uniforms from
 /// exponential spacings, then one walk.
 ///   U_(j) = (E_1 + ... + E_j) / (E_1 + ... + E_(k+1))       [Devroye, Non-Uniform Random Variate Generation, 1986, ch. V]
+/// Cost  one word a draw; no memory beside the positions.
+inline void multinomial_positions(std::span<double const> weights, draws& source, std::span<std::size_t> positions) {
+  constexpr std::size_t batch = 256;
+  constexpr std::uint64_t whole = std::uint64_t{1} << 62;
+  std::size_t const k = positions.size();
+  std::uint64_t words[batch];
+  double spacings[batch];
+  pairwise_sum<double> sums;
+  for (std::size_t at = 0; at <= k; at += batch) {
+    std::size_t const n = std::min(batch, k + 1 - at);
+    for (std::size_t w = 0; w < batch; ++w) words[w] = w < n ? source() : ~std::uint64_t{0};
+    exponentials_from_words(words, spacings);
+    double sum = 0.0;
+    for (std::size_t w = 0; w < n; ++w) sum += spacings[w];
+    sums.add(sum);
+    std::size_t const kept = std::min(n, k - at);
+    if (kept > 0) std::memcpy(positions.data() + at, spacings, kept * sizeof(double));  // turned to points below
+  }
+  double const factor = static_cast<double>(whole) / sums.total();
+  std::uint64_t point = 0;
+  for (std::size_t& each : positions)
+    each = point += static_cast<std::uint64_t>(static_cast<std::int64_t>(std::bit_cast<double>(std::uint64_t{each}) * factor + 0.5));
+  points_to_positions(weights, whole, positions);
+}
 inline std::vector<std::size_t> multinomial_positions(std::span<double const> weights, std::size_t k, draws& source) {
-  std::vector<double> at(k);
-  double spacings = 0.0;
-  for (double& each : at) each = spacings += source.exponential(1.0);
-  spacings += source.exponential(1.0);
-  return positions_at(weights, k, [&](std::size_t j) { return at[j] / spacings; });
+  std::vector<std::size_t> positions(k);
+  multinomial_positions(weights, source, positions);
+  return positions;
 }
 
 /// Variance of the mean over k independent draws, given weights and values: sum W (f - mu)^2 / k.

@@ -2,6 +2,7 @@
 #pragma once
 
 #include <cstddef>
+#include <cstdint>
 #include <span>
 #include <vector>
 
@@ -13,8 +14,11 @@ namespace steelyard::inline v1::detail {
 /// Positions of k draws in rising order, one uniform number in each of k equal strata.
 ///   unbiased; variance never above the multinomial one           [Douc, Cappe & Moulines 2005]
 inline std::vector<std::size_t> stratified_positions(std::span<double const> weights, std::size_t k, draws& source) {
-  return positions_at(weights, k,
-                      [&](std::size_t j) { return (static_cast<double>(j) + source.uniform()) / static_cast<double>(k); });
+  int const bits = share_bits(k);
+  std::vector<std::size_t> positions(k);
+  for (std::size_t j = 0; j < k; ++j) positions[j] = (std::uint64_t{j} << bits) + (source() >> (64 - bits));
+  points_to_positions(weights, std::uint64_t{k} << bits, positions);
+  return positions;
 }
 
 /// Variance of the mean over k stratified draws, given weights and values:
