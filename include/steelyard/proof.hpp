@@ -9,5 +9,7 @@
 #include <steelyard/proof/closed_forms.hpp>
 #include <steelyard/proof/coverage.hpp>
 #include <steelyard/proof/instrument_check.hpp>
+#include <steelyard/proof/linear_normal.hpp>
+#include <steelyard/proof/progress.hpp>
 #include <steelyard/proof/self_check.hpp>
 #include <steelyard/proof/unbiased_resampling.hpp>

@@ -4,6 +4,7 @@
 #include <cmath>
 #include <cstddef>
 #include <cstdint>
+#include <string>
 #include <utility>
 #include <vector>
 
@@ -17,8 +18,9 @@ namespace steelyard::inline v1::proof::detail {
 
 namespace up = steelyard::v1::detail;
 
-using quiet = boost::math::policies::policy<boost::math::policies::promote_double<false>,
-                                            boost::math::policies::discrete_quantile<boost::math::policies::integer_round_outwards>>;
+using quiet = boost::math::policies::policy<
+    boost::math::policies::promote_double<false>,
+    boost::math::policies::discrete_quantile<boost::math::policies::integer_round_outwards>>;
 
 /// @throws bad_argument unless 0 < rate < 1.
 inline double checked_rate(char const* where, double rate) {
@@ -36,10 +38,21 @@ inline double chi_square_upper(double x, double degrees) {
 /// `second` has probability at most `rate`, half on either side.
 inline std::pair<std::uint64_t, std::uint64_t> hit_limits(std::uint64_t n, double p, double rate) {
   boost::math::binomial_distribution<double, quiet> const hits(static_cast<double>(n), p);
-  std::uint64_t lower = 0, upper = n;
-  while (lower < n && cdf(hits, static_cast<double>(lower)) <= 0.5 * rate) ++lower;
-  while (upper > 0 && cdf(complement(hits, static_cast<double>(upper - 1))) <= 0.5 * rate) --upper;
-  return {lower, upper};
+  // The smallest k in [0, n] for which `holds(k)`; it holds at n and keeps holding once it does.
+  auto const first_that = [n](auto holds) {
+    std::uint64_t low = 0, high = n;
+    while (low < high) {
+      std::uint64_t const middle = low + (high - low) / 2;
+      if (holds(middle))
+        high = middle;
+      else
+        low = middle + 1;
+    }
+    return low;
+  };
+  return {first_that([&](std::uint64_t k) { return k == n || cdf(hits, static_cast<double>(k)) > 0.5 * rate; }),
+          first_that(
+              [&](std::uint64_t k) { return k == n || cdf(complement(hits, static_cast<double>(k))) <= 0.5 * rate; })};
 }
 
 /// Pointwise limits for the cumulative counts of n uniform numbers at 1/K, 2/K, ..., (K-1)/K.

@@ -1,20 +1,25 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
-#include <array>
 #include <cmath>
-#include <cstddef>
-#include <cstdint>
+#include <string>
+#include <utility>
 #include <vector>
 
 #include <boost/math/distributions/beta.hpp>
 #include <boost/math/distributions/gamma.hpp>
 #include <boost/math/distributions/normal.hpp>
-#include <boost/math/special_functions/beta.hpp>
 #include <boost/math/special_functions/gamma.hpp>
 
+#include <steelyard/base/error.hpp>
 #include <steelyard/draw/draws.hpp>
+#include <steelyard/draw/from.hpp>
+#include <steelyard/proof/checked.hpp>
 #include <steelyard/weigh/likelihood.hpp>
+
+// Models with known answers, for tests of one's own plumbing. Each has a sampler and a weighter for a pipeline, and
+// what must come out: the posterior as a distribution of Boost.Math, its mean and sd, and the log-evidence, constants
+// included.
 
 namespace steelyard::inline v1::proof {
 
@@ -23,7 +28,10 @@ namespace steelyard::inline v1::proof {
 class normal_normal {
  public:
   normal_normal(double prior_mean, double prior_sd, double reading, double reading_sd)
-      : m_(prior_mean), s_(prior_sd), y_(reading), r_(reading_sd) {}
+      : m_(detail::finite("normal_normal", "the prior mean", prior_mean)),
+        s_(detail::positive("normal_normal", "the prior sd", prior_sd)),
+        y_(detail::finite("normal_normal", "the reading", reading)),
+        r_(detail::positive("normal_normal", "the reading's sd", reading_sd)) {}
 
   [[nodiscard]] auto sampler() const {
     return [m = m_, s = s_](draws& d) { return d.normal(m, s); };
@@ -51,7 +59,10 @@ class normal_normal {
 ///   posterior gamma(shape + sum, rate + n)
 class gamma_poisson {
  public:
-  gamma_poisson(double shape, double rate, std::vector<unsigned> counts) : a_(shape), b_(rate), counts_(std::move(counts)) {
+  gamma_poisson(double shape, double rate, std::vector<unsigned> counts)
+      : a_(detail::positive("gamma_poisson", "the shape", shape)),
+        b_(detail::positive("gamma_poisson", "the rate", rate)),
+        counts_(std::move(counts)) {
     for (unsigned const c : counts_) {
       sum_ += c;
       log_factorials_ += boost::math::lgamma(static_cast<double>(c) + 1.0);
@@ -69,8 +80,8 @@ class gamma_poisson {
   [[nodiscard]] double mean() const { return (a_ + sum_) / rate(); }
   [[nodiscard]] double sd() const { return std::sqrt(a_ + sum_) / rate(); }
   [[nodiscard]] double log_evidence() const {
-    return a_ * std::log(b_) - boost::math::lgamma(a_) + boost::math::lgamma(a_ + sum_) - (a_ + sum_) * std::log(rate()) -
-           log_factorials_;
+    return a_ * std::log(b_) - boost::math::lgamma(a_) + boost::math::lgamma(a_ + sum_) -
+           (a_ + sum_) * std::log(rate()) - log_factorials_;
   }
   [[nodiscard]] boost::math::gamma_distribution<double> posterior() const { return {a_ + sum_, 1.0 / rate()}; }
 
@@ -85,7 +96,13 @@ class gamma_poisson {
 ///   posterior beta(a + k, b + n - k)
 class beta_binomial {
  public:
-  beta_binomial(double a, double b, unsigned hits, unsigned trials) : a_(a), b_(b), k_(hits), n_(trials) {}
+  beta_binomial(double a, double b, unsigned hits, unsigned trials)
+      : a_(detail::positive("beta_binomial", "the first shape", a)),
+        b_(detail::positive("beta_binomial", "the second shape", b)), k_(hits), n_(trials) {
+    if (hits > trials)
+      throw bad_argument("beta_binomial: " + std::to_string(hits) + " hits of " + std::to_string(trials) +
+                         " trials; there can be no more hits than trials");
+  }
 
   [[nodiscard]] auto sampler() const {
     return [prior = boost::math::beta_distribution<double>(a_, b_)](draws& d) { return d.from(prior); };
@@ -106,51 +123,13 @@ class beta_binomial {
   [[nodiscard]] boost::math::beta_distribution<double> posterior() const { return {a_ + k_, b_ + n_ - k_}; }
 
  private:
-  static double log_beta(double a, double b) {
+  [[nodiscard]] static double log_beta(double a, double b) {
     return boost::math::lgamma(a) + boost::math::lgamma(b) - boost::math::lgamma(a + b);
   }
   [[nodiscard]] double log_choose() const {
     return boost::math::lgamma(n_ + 1.0) - boost::math::lgamma(k_ + 1.0) - boost::math::lgamma(n_ - k_ + 1.0);
   }
   double a_, b_, k_, n_;
-};
-
-/// D standard normal unknowns, one normal reading of h . x. State: std::array<double, D>.
-///   posterior mean h y / (|h|^2 + s^2), covariance I - h h^T / (|h|^2 + s^2)
-template <std::size_t D>
-class linear_reading {
- public:
-  using state = std::array<double, D>;
-  linear_reading(state const& h, double reading, double reading_sd) : h_(h), y_(reading), s_(reading_sd) {}
-
-  [[nodiscard]] auto sampler() const {
-    return [](draws& d) {
-      state x{};
-      for (double& each : x) each = d.normal();
-      return x;
-    };
-  }
-  [[nodiscard]] auto weighter() const {
-    return [h = h_, y = y_, s = s_](state const& x) {
-      double gap = y;
-      for (std::size_t i = 0; i < D; ++i) gap -= h[i] * x[i];
-      return log_likelihood{-0.5 * (gap / s) * (gap / s) - std::log(s) - 0.918938533204672741780};
-    };
-  }
-  [[nodiscard]] double mean(std::size_t i) const { return h_[i] * y_ / total(); }
-  [[nodiscard]] double covariance(std::size_t i, std::size_t j) const { return (i == j ? 1.0 : 0.0) - h_[i] * h_[j] / total(); }
-  [[nodiscard]] double log_evidence() const {
-    return -0.5 * y_ * y_ / total() - 0.5 * std::log(total()) - 0.918938533204672741780;
-  }
-
- private:
-  [[nodiscard]] double total() const {
-    double sum = s_ * s_;
-    for (double const each : h_) sum += each * each;
-    return sum;
-  }
-  state h_;
-  double y_, s_;
 };
 
 }  // namespace steelyard::inline v1::proof
