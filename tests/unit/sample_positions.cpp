@@ -9,6 +9,9 @@
 #include <cstdint>
 #include <vector>
 
+#if defined(__GNUC__) && !defined(__clang__)
+#pragma GCC diagnostic ignored "-Wmaybe-uninitialized"  // seen in cpp_int by GCC 12
+#endif
 #include <boost/multiprecision/cpp_int.hpp>
 
 #include <steelyard/core.hpp>

@@ -143,6 +143,7 @@ TEST_CASE("distribution function: x = w = 1 .. 10") {
 }
 
 TEST_CASE("distribution function: chosen points, and what is refused") {
+  static_assert(sy::estimator<sy::cumulative_points_estimator<double (*)(double)>>);
   auto const at = ten().cumulative(itself, {0.5, 1.0, 4.0, 4.5, 11.0});
   double const shares[] = {0.0, 1.0, 10.0, 10.0, 55.0};
   for (std::size_t j = 0; j < 5; ++j) CHECK(at.shares[j].value == doctest::Approx(shares[j] / 55.0).epsilon(1e-14));

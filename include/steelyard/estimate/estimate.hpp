@@ -107,7 +107,12 @@ class estimate {
     double const t = detail::student_upper_quantile(0.5 * (1.0 - level), degrees_of_freedom);
     if (scale_ == error_scale::linear)
       return {value - t * standard_error, value + t * standard_error, true, true};
-    double const p = value / unit_, odds = p / (1.0 - p);
+    double const p = value / unit_;
+    if (!(p > 0.0 && p < 1.0)) {  // so near 0 or 1 that no double lies between
+      double const reach = t * standard_error, lower = value - reach, upper = value + reach;
+      return {lower > 0.0 ? lower : 0.0, upper < unit_ ? upper : unit_, true, true};
+    }
+    double const odds = p / (1.0 - p);
     double const factor = detail::portable_exp(t * (standard_error / unit_) / (p * (1.0 - p)));
     return {unit_ * (odds / (odds + factor)), unit_ * (odds / (odds + 1.0 / factor)), true, true};
   }
@@ -121,10 +126,19 @@ class estimate {
     return e;
   }
 
-  /// The same answer with a further, independent source of error.
-  [[nodiscard]] estimate with_added_variance(double variance) const {
+  /// From few groups: the same quantity in a draw from their sample, which adds an independent error of its own, carried by
+  /// so many terms. Degrees of freedom stay; the verdict falls where what the draw added rests on too few terms.
+  [[nodiscard]] estimate drawn_again(double its_value, double added_variance, double added_carriers, error_scale scale) const {
     estimate e = *this;
-    e.standard_error = std::sqrt(standard_error * standard_error + variance);
+    e.value = its_value;
+    e.scale_ = scale;
+    double const own = standard_error * standard_error, total = own + added_variance;
+    e.standard_error = std::sqrt(total);
+    if (!(total > 0.0) || !(added_variance > 0.0)) return e;
+    double const kept = own / total, added = added_variance / total;
+    double const of_added = added_carriers > 0.0 ? added * added / added_carriers : 1.0;
+    e.carriers = 1.0 / ((carriers > 0.0 ? kept * kept / carriers : 0.0) + of_added);
+    if (of_added > 1.0 / 30.0) e.lower_verdict(of_added > 1.0 / 5.0 ? steelyard::verdict::broken : steelyard::verdict::strained);
     return e;
   }
 

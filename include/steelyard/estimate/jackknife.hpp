@@ -18,6 +18,8 @@ namespace steelyard::inline v1::detail {
 /// most 64 groups (label mod 64, labels being ranks), and the delete-one-group jackknife over them.
 ///   theta_(g): the value without group g;  m_g: the group's share of the samples
 ///   u_g = (1 - m_g) (mean of theta_(.) - theta_(g)),  se^2 = c sum u_g^2       [Miller, Biometrika 61, 1974]
+/// Assumes samples in an order that says nothing about them. In an ensemble that was sorted, or counted by value, neighbours
+/// are alike, and runs of 16 of them are no independent groups: the error bar is too wide, and too narrow at great length.
 template <class E>
 class jackknife {
  public:

@@ -33,7 +33,7 @@ template <class X>
 std::vector<double> plain_weights(weighted_sample<X> const& sample);
 
 /// Error of a mean over k slots that were drawn from a weighted sample: the
-/// parent's own error and that of the resampling, which are independent.
+/// parent's own error and that of the resampling, which are independent. Few groups of the parent stay the judges.
 inline estimate resampled_estimate(double value, estimate const& parent, double variance, double carriers, double k,
                                    bool event) {
   double const own = parent.standard_error * parent.standard_error;
@@ -49,11 +49,13 @@ inline estimate resampled_estimate(double value, estimate const& parent, double 
     facts.largest_unit = 1.0 / k + (parent.effective_size > 0.0 ? 1.0 / parent.effective_size : 1.0);
     return estimate::one_sided(value == 1.0, facts);
   }
+  error_scale const scale = event ? error_scale::logit : error_scale::linear;
+  if (parent.groups() > 0.0) return parent.drawn_again(value, variance, carriers, scale);
   error_terms terms;
   terms.sum_squares = own + variance;
   terms.sum_fourth = (parent.carriers > 0.0 ? own * own / parent.carriers : 0.0) +
                      (carriers > 0.0 ? variance * variance / carriers : 0.0);
-  return estimate(value, terms, facts, event ? error_scale::logit : error_scale::linear);
+  return estimate(value, terms, facts, scale);
 }
 
 /// Takes in a whole kept sample and answers how much the mean over k slots varies from draw to draw.

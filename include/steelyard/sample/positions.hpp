@@ -125,7 +125,9 @@ inline void points_to_positions(std::span<double const> weights, std::uint64_t w
     look_on(a);
     return true;
   };
-  while (more(all[0]) & more(all[1]) & more(all[2])) {
+  while (true) {
+    bool const first = more(all[0]), second = more(all[1]), third = more(all[2]);
+    if (!(first && second && third)) break;
     std::size_t turns = running_shares::run;  // that no strand runs out in
     for (strand const& a : all) turns = std::min({turns, a.stop - 1 - a.j, a.size - a.i});
     std::uint64_t p0 = all[0].point, p1 = all[1].point, p2 = all[2].point;
