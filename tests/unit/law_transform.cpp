@@ -158,9 +158,10 @@ TEST_CASE("every state split into two of half its weight: the same values, and i
 
 TEST_CASE("shift and scale of the readout carry through: values, errors and carriers") {
   auto const sample = sy::weigh(normals(4000, 7), law::read_one);
-  for (auto const& [shift, scale] : {std::pair{0.0, -3.0}, std::pair{1000.0, 0.5}, std::pair{-7e6, 2e4}}) {
+  for (auto const& change : {std::pair{0.0, -3.0}, std::pair{1000.0, 0.5}, std::pair{-7e6, 2e4}}) {
+    double const shift = change.first, scale = change.second;
     CAPTURE(shift);
-    auto const moved = [shift = shift, scale = scale](double x) { return shift + scale * x; };
+    auto const moved = [shift, scale](double x) { return shift + scale * x; };
     auto const follows = [&](sy::estimate const& plain, sy::estimate const& other) {
       CHECK(close(other.value, shift + scale * plain.value, 1e-12));
       CHECK(close(other.standard_error, std::abs(scale) * plain.standard_error, 1e-7));

@@ -46,8 +46,9 @@ std::vector<step> const steps{{1, 1}, {10, 5}, {1000, 24}, {1000, 25}, {1024, 1}
 
 TEST_CASE("a sample extended answers with the bits of the longer run") {
   sy::pipeline const problem{law::draw_normal, law::read_one};
-  for (auto const& [from, more] : steps)
+  for (step const& one : steps)
     for (sy::keeping const keep : {sy::keeping::states, sy::keeping::streams}) {
+      std::uint64_t const from = one.from, more = one.more;
       CAPTURE(from);
       CAPTURE(more);
       sy::plan plan{.size = from, .seed = 1, .keep = keep};
@@ -65,7 +66,8 @@ TEST_CASE("a sample extended answers with the bits of the longer run") {
 TEST_CASE("extending with runs set aside, and with several readings") {
   auto const both = sy::together(sy::named("first", law::read_one), sy::named("second", [](double x) { return sy::likelihood{x < 1.0 ? 1.0 : 0.0}; }));
   sy::pipeline const failing{may_fail, both};
-  for (auto const& [from, more] : steps) {
+  for (step const& one : steps) {
+    std::uint64_t const from = one.from, more = one.more;
     if (from < 10) continue;
     CAPTURE(from);
     sy::plan plan{.size = from, .seed = 2, .on_failure = sy::failures::set_aside};

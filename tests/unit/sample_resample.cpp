@@ -59,8 +59,10 @@ TEST_CASE("exact variances of the mean: four draws from W = (.1 .2 .3 .4), f = (
     double variance;
   };
   std::vector<double> const weights{0.1, 0.2, 0.3, 0.4};
-  for (auto const& [how, variance] : {known{sy::scheme::multinomial, 0.25}, known{sy::scheme::residual, 0.15625},
+  for (known const& one : {known{sy::scheme::multinomial, 0.25}, known{sy::scheme::residual, 0.15625},
                                       known{sy::scheme::stratified, 0.04}, known{sy::scheme::systematic, 0.1}}) {
+    sy::scheme const how = one.how;
+    double const variance = one.variance;
     CAPTURE(static_cast<int>(how));
     CHECK(close(sy::detail::resampling_variance(how, weights, four, 4), variance, 1e-12));
     auto const seen = over_seeds(sample, 4, how, 8000, law::itself);
