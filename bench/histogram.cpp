@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: BSL-1.0
 // Weighted histograms of 100 even bins with what their standard errors need.
+#include <array>
 #include <cstdint>
 #include <random>
 #include <vector>
@@ -66,7 +67,7 @@ BENCH_ROW(boost_histogram, "histogram of 100 even bins | Boost.Histogram, weight
 template <class Bins>
 void beside_xtensor(benchmark::State& state, double wanted, std::size_t few, Bins bins_of) {
   std::size_t const n = all().values.size();
-  std::vector<std::size_t> const shape{few};
+  std::array<std::size_t, 1> const shape{few};
   auto const values = xt::adapt(all().values.data(), few, xt::no_ownership(), shape);
   auto const weights = xt::adapt(all().weights.data(), few, xt::no_ownership(), shape);
   bench::compare(state, wanted, bench::side{n, [&] { benchmark::DoNotOptimize(ours(n).probability(50).standard_error); }},

@@ -191,6 +191,15 @@ struct draws_access {
     d.supplied_ = first_words.size();
   }
 
+  /// On another stream of the same run, its first words already made. Cost: four stores.
+  /// @pre `d` was last put on a stream without a custom source or recorded words
+  static void move_on(draws& d, std::uint64_t stream, std::uint64_t const* first_words, std::size_t size) noexcept {
+    d.stream_ = stream;
+    d.next_ = first_words;
+    d.end_ = first_words + size;
+    d.supplied_ = size;
+  }
+
   /// On sample `sample` of a custom source.
   /// @pre the source outlives its use
   static void seat(draws& d, word_source const& source, std::uint64_t seed, std::uint64_t sample) noexcept {

@@ -7,8 +7,10 @@
 #include <string>
 #include <vector>
 
+#include <steelyard/base/algorithm.hpp>
 #include <steelyard/base/bits.hpp>
 #include <steelyard/base/error.hpp>
+#include <steelyard/base/kernels.hpp>
 #include <steelyard/base/text.hpp>
 #include <steelyard/estimate/run_facts.hpp>
 #include <steelyard/estimate/weight_totals.hpp>
@@ -27,35 +29,30 @@ class block {
  public:
   /// @param columns  readout columns of all estimators together
   explicit block(std::size_t columns, std::size_t capacity = block_size)
-      : capacity_(capacity), columns_(columns), values_(columns * capacity), weights_(capacity), kept_weights_(capacity) {
-    log_weights_.reserve(capacity);
-    positions_.reserve(capacity);
-    samples_.reserve(capacity);
-  }
+      : capacity_(capacity), columns_(columns), log_weights_(capacity), values_(columns * capacity), weights_(capacity),
+        kept_weights_(capacity), positions_(capacity), samples_(capacity) {}
 
   /// @param first       number of the block's first sample
   /// @param first_copy  the same with every state as often as it counts
   void clear(std::uint64_t first, std::uint64_t first_copy = 0) {
     first_ = first;
     first_copy_ = first_copy;
-    log_weights_.clear();
-    positions_.clear();
-    samples_.clear();
     counts_.clear();
     groups_.clear();
     base_.clear();
-    kept_ = 0;
+    size_ = kept_ = 0;
   }
 
   /// Takes in one state. Where it returns true, the state's readouts go to `row()` next.
-  bool push(std::uint64_t sample, double log_weight) {
-    std::size_t const at = log_weights_.size();
-    log_weights_.push_back(log_weight);
-    if (!(log_weight > impossible)) return false;
-    positions_.push_back(static_cast<std::uint32_t>(at));
-    samples_.push_back(sample);
-    ++kept_;
-    return true;
+  /// @pre fewer than the capacity were pushed
+  bool push(std::uint64_t sample, double log_weight) noexcept {
+    std::size_t const at = size_++, kept = kept_;
+    bool const possible = log_weight > impossible;
+    kept_ = kept + (possible ? 1 : 0);
+    log_weights_[at] = log_weight;
+    positions_[kept] = static_cast<std::uint32_t>(at);
+    samples_[kept] = sample;
+    return possible;
   }
   void push_count(std::uint64_t m) { counts_.push_back(m); }
   void push_group(std::uint32_t label) { groups_.push_back(label); }
@@ -73,20 +70,24 @@ class block {
   /// Turns log-weights to weights and packs the columns. @pre every push is done
   void close(how_drawn how) {
     how_ = how;
-    totals_ = weight_totals::of(log_weights_, counts_, std::span<double>(weights_.data(), log_weights_.size()));
+    std::span<double const> const logs = std::span<double const>(log_weights_).first(size_);
+    totals_ = weight_totals::of(logs, counts_, std::span<double>(weights_.data(), size_), size_ - kept_);
     totals_.add_groups(groups_, counts_, weights_);
-    totals_.largest = seen_.take(log_weights_, counts_);
-    for (std::size_t j = 0; j < kept_; ++j) kept_weights_[j] = weights_[positions_[j]];
+    totals_.largest = seen_.take(logs, counts_, totals_.maximum);
+    if (kept_ == size_)
+      std::copy_n(weights_.begin(), kept_, kept_weights_.begin());
+    else
+      for (std::size_t j = 0; j < kept_; ++j) kept_weights_[j] = weights_[positions_[j]];
     pick(counts_, kept_counts_);
     pick(groups_, kept_groups_);
     number_copies();
     for (std::size_t c = 1; c < columns_ && kept_ < capacity_; ++c)
-      for (std::size_t j = 0; j < kept_; ++j) values_[c * kept_ + j] = values_[c * capacity_ + j];
+      std::copy_n(values_.data() + c * capacity_, kept_, values_.data() + c * kept_);
   }
 
   [[nodiscard]] weight_totals const& totals() const noexcept { return totals_; }
   [[nodiscard]] std::size_t kept() const noexcept { return kept_; }
-  [[nodiscard]] std::span<std::uint64_t const> samples() const noexcept { return samples_; }
+  [[nodiscard]] std::span<std::uint64_t const> samples() const noexcept { return {samples_.data(), kept_}; }
   [[nodiscard]] std::uint64_t first() const noexcept { return first_; }
   /// Number of the first copy of kept state j, were every state drawn as often as it counts. @pre there are counts
   [[nodiscard]] std::uint64_t first_copy(std::size_t j) const noexcept { return kept_copies_[j]; }
@@ -104,7 +105,7 @@ class block {
   /// Every state, those of weight zero too; no values.
   [[nodiscard]] weighted_view all() const noexcept {
     weighted_view v;
-    v.weights = std::span<double const>(weights_).first(log_weights_.size());
+    v.weights = std::span<double const>(weights_).first(size_);
     v.counts = counts_;
     v.groups = groups_;
     v.base_weights = base_;
@@ -115,6 +116,7 @@ class block {
   /// @throws bad_readout where a readout is not finite at a state of positive weight.
   void refuse_not_finite(std::size_t column, std::size_t columns) const {
     std::span<double const> const values = view(column, columns).values;
+    if (all_finite(values)) return;
     for (std::size_t k = 0; k < values.size(); ++k)
       if (!is_finite(values[k]))
         throw bad_readout("estimate: a readout of sample " + std::to_string(samples_[k % kept_]) + " is " +
@@ -140,10 +142,11 @@ class block {
   }
 
   std::size_t capacity_;
+  std::size_t kept_ = 0;  // states of positive weight; not beside size_, or compilers move both through one slow register
   std::size_t columns_;
   std::uint64_t first_ = 0;
   std::uint64_t first_copy_ = 0;
-  std::size_t kept_ = 0;
+  std::size_t size_ = 0;  // states pushed
   how_drawn how_ = how_drawn::independent;
   std::vector<double> log_weights_, values_, weights_, kept_weights_, base_;
   std::vector<std::uint32_t> positions_;

@@ -64,9 +64,13 @@ class everything_slot {
     v.counts = all.counts;
     v.groups = all.groups;
     v.how = facts.how;
-    E whole = empty_.fresh();
-    whole.add(v.values, v.weights, v);
-    return whole.answer(facts);
+    if constexpr (requires { empty_.answer_from(v, facts); }) {  // needs no copy of its own
+      return empty_.answer_from(v, facts);
+    } else {
+      E whole = empty_.fresh();
+      whole.add(v.values, v.weights, v);
+      return whole.answer(facts);
+    }
   }
 
  private:

@@ -2,6 +2,7 @@
 #pragma once
 
 #include <cstddef>
+#include <cstdint>
 #include <optional>
 #include <span>
 #include <tuple>
@@ -46,6 +47,12 @@ class histogram_estimator {
   }
 
   void add(std::span<double const> values, std::span<double const> weights, weighted_view const& view) {
+    if (view.groups.empty() && view.counts.empty()) {
+      detail::add_to_cells(cells_, weights, [&](std::size_t first, std::size_t n, std::uint64_t* cells) {
+        edges_->cells(values.subspan(first, n), cells);
+      });
+      return;
+    }
     if (view.groups.empty()) {
       for (std::size_t i = 0; i < weights.size(); ++i)
         cells_[edges_->cell(values[i])].add(view.count(i), weights[i]);

@@ -17,7 +17,7 @@ namespace steelyard::inline v1 {
 
 namespace detail {
 
-/// Takes in the whole of a kept sample: what quantiles and intervals share.
+/// Takes in the whole of a kept sample: what quantiles and intervals share. `answer_from` spares the copy of it.
 template <class Readout>
 class column_estimator {
  public:
@@ -60,8 +60,8 @@ class column_estimator {
     all.groups = groups_;
     return all;
   }
-  [[nodiscard]] std::shared_ptr<weighted_column const> column(run_facts const& facts) const {
-    return std::make_shared<weighted_column const>(view(), facts);
+  [[nodiscard]] static std::shared_ptr<weighted_column const> column(weighted_view const& all, run_facts const& facts) {
+    return std::make_shared<weighted_column const>(all, facts);
   }
 
  private:
@@ -88,7 +88,10 @@ class quantile_estimator : public detail::column_estimator<Readout> {
       : detail::column_estimator<Readout>(std::move(its_readout)), p_(detail::checked_level("quantile", p)) {}
 
   [[nodiscard]] quantile_estimator fresh() const { return {this->readout(), p_}; }
-  [[nodiscard]] quantile_result answer(run_facts const& facts) const { return {this->column(facts), p_}; }
+  [[nodiscard]] quantile_result answer(run_facts const& facts) const { return answer_from(this->view(), facts); }
+  [[nodiscard]] quantile_result answer_from(weighted_view const& all, run_facts const& facts) const {
+    return {this->column(all, facts), p_};
+  }
 
  private:
   double p_;
@@ -116,8 +119,9 @@ class coverage_interval_estimator : public detail::column_estimator<Readout> {
       : detail::column_estimator<Readout>(std::move(its_readout)), level_(detail::checked_level("coverage_interval", level)) {}
 
   [[nodiscard]] coverage_interval_estimator fresh() const { return {this->readout(), level_}; }
-  [[nodiscard]] interval_result answer(run_facts const& facts) const {
-    auto const column = this->column(facts);
+  [[nodiscard]] interval_result answer(run_facts const& facts) const { return answer_from(this->view(), facts); }
+  [[nodiscard]] interval_result answer_from(weighted_view const& all, run_facts const& facts) const {
+    auto const column = this->column(all, facts);
     return {quantile_result(column, 0.5 * (1.0 - level_)), quantile_result(column, 0.5 * (1.0 + level_))};
   }
 

@@ -41,14 +41,23 @@ class reader {
 
   /// Column c of the state goes to first[c * stride].
   void read(State const& state, double* first, std::size_t stride) const {
-    std::apply(
-        [&](auto const&... of_one) {
-          (std::apply([&](auto const&... r) { (write(r, state, first, stride), ...); }, of_one), ...);
-        },
-        called_);
+    read_each(state, first, stride, std::index_sequence_for<Es...>{});
   }
 
  private:
+  template <std::size_t... I>
+  void read_each([[maybe_unused]] State const& state, [[maybe_unused]] double*& first, [[maybe_unused]] std::size_t stride,
+                 std::index_sequence<I...>) const {
+    (read_one(std::get<I>(called_), state, first, stride,
+              std::make_index_sequence<std::tuple_size_v<std::remove_cvref_t<decltype(std::get<I>(called_))>>>{}),
+     ...);
+  }
+  template <class Readouts, std::size_t... K>
+  static void read_one([[maybe_unused]] Readouts const& of_one, [[maybe_unused]] State const& state,
+                       [[maybe_unused]] double*& first, [[maybe_unused]] std::size_t stride,
+                       std::index_sequence<K...>) {
+    (write(std::get<K>(of_one), state, first, stride), ...);
+  }
   template <class R>
   static void write(R const& r, State const& state, double*& first, std::size_t stride) {
     auto&& answer = detail::call(r, state);

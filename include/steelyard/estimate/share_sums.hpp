@@ -4,6 +4,7 @@
 #include <array>
 #include <cstddef>
 #include <cstdint>
+#include <span>
 #include <tuple>
 #include <vector>
 
@@ -38,6 +39,32 @@ struct cell_sums {
     return *this;
   }
 };
+
+/// Adds weights to cells. Sums lie 32 bytes apart meanwhile, so that two of the three go through one register.
+/// @param cells_of  writes the cells of entries [first, first + n) to an array
+template <class CellsOf>
+void add_to_cells(std::vector<cell_sums>& cells, std::span<double const> weights, CellsOf cells_of) {
+  constexpr std::size_t run = 256;
+  struct alignas(32) powers {
+    double of[4] = {};  // w, w^2, w^4
+  };
+  std::uint64_t at[run];
+  std::vector<powers> sums(cells.size());
+  for (std::size_t first = 0; first < weights.size(); first += run) {
+    std::size_t const n = std::min(run, weights.size() - first);
+    cells_of(first, n, at);
+    double const* const from = weights.data() + first;
+    powers* const to = sums.data();
+    for (std::size_t i = 0; i < n; ++i) {
+      double const w = from[i], w2 = w * w;
+      double(&sum)[4] = to[at[i]].of;
+      sum[0] += w;
+      sum[1] += w2;
+      sum[2] += w2 * w2;
+    }
+  }
+  for (std::size_t b = 0; b < cells.size(); ++b) cells[b] += cell_sums{sums[b].of[0], sums[b].of[1], sums[b].of[2]};
+}
 
 /// Share p of one cell, or of several, against the rest of a whole:
 ///   sum u^2 = (1-p)^2 Q_in + p^2 Q_out, sums of terms that are never negative.

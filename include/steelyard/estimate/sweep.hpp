@@ -115,12 +115,12 @@ class sweep {
       stretch const& task = tasks[t];
       failure.guard(task.first * block_size, [&] {
         auto const worker = pool.take();
-        block buffer(columns);
+        auto const buffer = buffers_.take();
         block_tree<node_type> tree;
         for (std::uint64_t b = task.first; b < task.first + (std::uint64_t{1} << task.level); ++b) {
           if (failure.before(b * block_size)) return;
-          worker->fill(b, buffer);
-          tree.push(node_of(buffer));
+          worker->fill(b, *buffer);
+          tree.push(node_of(*buffer));
         }
         done[t] = tree.release();
       });
@@ -241,6 +241,7 @@ class sweep {
 
   node_type empty_;
   block_tree<node_type> tree_;
+  worker_pool<block> buffers_{[] { return std::make_unique<block>(columns); }};
   bool prepared_;
   std::vector<std::unique_ptr<block>> held_;
   std::size_t held_kept_ = 0;

@@ -13,7 +13,7 @@ namespace steelyard::inline v1::detail {
 
 /// The largest log-weights seen, up to 257 of them: what the tail index is
 /// fitted to. Which ones stay does not depend on the order they come or merge in.
-/// Cost  a comparison a weight once the first thousand are in.
+/// Cost  a comparison a weight, or one a block of weights that are all too small.
 class top_weights {
  public:
   static constexpr std::size_t most = 257;
@@ -27,8 +27,10 @@ class top_weights {
   }
 
   /// Takes in a block, each entry as often as it counts, and returns what of it may be among the largest of all.
-  top_weights take(std::span<double const> log_weights, std::span<std::uint64_t const> counts) {
+  /// @param maximum  the largest of the block
+  top_weights take(std::span<double const> log_weights, std::span<std::uint64_t const> counts, double maximum) {
     top_weights of_block;
+    if (!(maximum > floor_)) return of_block;
     for (std::size_t i = 0; i < log_weights.size(); ++i) {
       double const log_weight = log_weights[i];
       if (!(log_weight > floor_)) continue;

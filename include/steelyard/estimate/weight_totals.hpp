@@ -30,12 +30,13 @@ struct weight_totals {
   group_sums<1> groups;         ///< sum m w of each group, where there are groups
 
   /// Fills `weights` with exp(log_weight - maximum), 0 where impossible.
+  /// @param none  how many are impossible
   static weight_totals of(std::span<double const> log_weights, std::span<std::uint64_t const> counts,
-                        std::span<double> weights) {
+                          std::span<double> weights, std::size_t none) {
     weight_totals s;
     s.states = s.samples = static_cast<double>(log_weights.size());
     s.maximum = block_maximum(log_weights);
-    for (double const each : log_weights) s.zeros += each > impossible ? 0.0 : 1.0;
+    s.zeros = static_cast<double>(none);
     auto const sums = weights_from_logs(log_weights, s.maximum, weights);
     s.sum = sums.sum;
     s.squares = sums.sum_squares;

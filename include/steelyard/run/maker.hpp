@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
+#include <array>
 #include <cstddef>
 #include <cstdint>
 #include <exception>
@@ -56,7 +57,9 @@ class maker {
 
   maker(Sampler const& draw, Weighter const& weigh_with, run_terms const& terms)
       : sampler_(instance_of<Sampler>::make(draw)), weighter_(instance_of<Weighter>::make(weigh_with)), terms_(terms),
-        draws_(terms.seed, 0), largest_(items, impossible) {}
+        draws_(terms.seed, 0) {
+    largest_.fill(impossible);
+  }
 
   /// Draws and weighs sample i, then calls take(state&&, log_weight, scores); not for a run set aside.
   template <class Take>
@@ -107,8 +110,9 @@ class maker {
 
   /// Says that samples first, first + 1, ..., first + n - 1 come next, in turn.
   void expect(std::uint64_t first, std::uint64_t n) noexcept {
-    ahead_first_ = ahead_end_ = first;
-    ahead_last_ = terms_.source.independent() ? first + n : first;
+    expected_first_ = first;
+    expected_last_ = terms_.source.independent() ? first + n : first;
+    ahead_size_ = 0;
   }
 
   /// Runs set aside by this worker so far, and its largest log-likelihood of each reading.
@@ -125,7 +129,8 @@ class maker {
     double row[items];
     stage = "the weighter";
     score_items(weighter_, std::as_const(drawn), std::span<double>(row));
-    double const total = total_log(0.0, row);
+    double total = 0.0 + row[0];
+    if constexpr (items > 1) total = total_log(0.0, row);
     for (std::size_t k = 0; k < items; ++k)
       if (row[k] > largest_[k]) largest_[k] = row[k];
     stage = "a readout";
@@ -134,28 +139,38 @@ class maker {
 
   /// On the start of sample i, its first words made with those of its neighbours.
   void seat(std::uint64_t i) {
-    if (i < ahead_first_ || i >= ahead_last_) return seat_on_sample(draws_, terms_, i);
-    if (i >= ahead_end_) {
-      std::uint64_t const used = (draws_.words_used() + 3) / 4;
-      blocks_ = used > blocks_ ? (used < most_ahead ? used : most_ahead) : blocks_;
-      std::uint64_t const n = ahead_last_ - i < batch ? ahead_last_ - i : batch;
-      words_.resize(static_cast<std::size_t>(n * blocks_ * 4));
-      first_words(terms_.seed, purpose::run, 0, i, static_cast<std::size_t>(n), static_cast<std::size_t>(blocks_), words_);
-      ahead_first_ = i;
-      ahead_end_ = i + n;
-    }
-    std::size_t const each = static_cast<std::size_t>(blocks_ * 4);
-    draws_access::seat(draws_, terms_.seed, i, purpose::run, 0,
-                       std::span<std::uint64_t const>(words_).subspan(static_cast<std::size_t>(i - ahead_first_) * each, each));
+    std::uint64_t const at = i - ahead_first_;
+    if (at < ahead_size_)
+      draws_access::move_on(draws_, i, words_.data() + at * words_each_, words_each_);
+    else
+      seat_afresh(i);
+  }
+#if defined(__GNUC__)
+  [[gnu::noinline]]
+#endif
+  void seat_afresh(std::uint64_t i) {
+    std::uint64_t const used = (draws_.words_used() + 3) / 4;
+    seat_on_sample(draws_, terms_, i);
+    if (i < expected_first_ || i >= expected_last_) return;
+    std::uint64_t const known = words_each_ / 4, blocks = used > known ? (used < most_ahead ? used : most_ahead) : known;
+    std::uint64_t const n = expected_last_ - i < batch ? expected_last_ - i : batch;
+    words_each_ = static_cast<std::size_t>(blocks * 4);
+    words_.resize(static_cast<std::size_t>(n) * words_each_);
+    first_words(terms_.seed, purpose::run, 0, i, n, blocks, words_);
+    ahead_first_ = i;
+    ahead_size_ = n;
+    draws_access::move_on(draws_, i, words_.data(), words_each_);
   }
 
   instance_t<Sampler> sampler_;
   instance_t<Weighter> weighter_;
   run_terms const& terms_;
   draws draws_;
-  std::vector<double> largest_;
+  std::array<double, items> largest_;
   std::uint64_t failed_ = 0;
-  std::uint64_t ahead_first_ = 0, ahead_end_ = 0, ahead_last_ = 0, blocks_ = 1;
+  std::uint64_t expected_first_ = 0, expected_last_ = 0;  // samples that come in turn
+  std::uint64_t ahead_first_ = 0, ahead_size_ = 0;        // those of them whose first words are made
+  std::size_t words_each_ = 4;
   std::vector<std::uint64_t> words_;
 };
 
