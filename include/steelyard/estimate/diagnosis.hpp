@@ -26,6 +26,9 @@ enum class finding_kind {
   target_missed,   ///< a target for the standard error was not met within the size
   reading_doubt,   ///< a reading looks off scale
   heavy_tail,      ///< the largest weights fall off so slowly that error bars settle slowly
+  not_mixed,       ///< chains of a tempered run did not forget where they began
+  far_from_drawn,  ///< a tempered sample is asked under other weights than those it was moved under
+  cost,            ///< what was done, and what it cost
 };
 
 /// One sentence with the numbers and the next step.
@@ -42,6 +45,8 @@ class diagnosis {
     double effective_size = 0.0, perplexity = 0.0, largest_share = 0.0, groups = 0.0;
     double tail_index = 0.0, tail_error = 0.0;
     bool tail_known = false, bounded = false;
+    double lineages = 0.0;        ///< effective number after tempering; 0: another kind of sample
+    bool far_from_drawn = false;  ///< of a tempered sample: other weights than those it was moved under
   };
 
   diagnosis() = default;
@@ -77,13 +82,20 @@ class diagnosis {
   [[nodiscard]] double share_of_zeros() const noexcept {
     return n_.states > 0 ? static_cast<double>(n_.zeros) / static_cast<double>(n_.states) : 0.0;
   }
+  /// Effective number of lineages after tempering, 1 / sum m_e^2; 0 for another kind of sample.
+  [[nodiscard]] double lineages() const noexcept { return n_.lineages; }
   [[nodiscard]] std::uint64_t drawn() const noexcept { return n_.drawn; }
   [[nodiscard]] std::uint64_t failed() const noexcept { return n_.failed; }
   [[nodiscard]] std::span<finding const> findings() const noexcept { return findings_; }
 
   /// The verdict on the weights alone: sound from an effective size of 50 unless the tail index is above 0.7, broken
-  /// below a size of 5. Each estimate has a verdict of its own, which can be worse.
+  /// below a size of 5. After tempering the effective lineages decide: sound from 20, broken below 2. Each estimate
+  /// has a verdict of its own, which can be worse.
   [[nodiscard]] steelyard::verdict verdict() const noexcept {
+    if (n_.lineages > 0.0)
+      return n_.lineages < 2.0                            ? steelyard::verdict::broken
+             : n_.lineages < 20.0 || n_.far_from_drawn    ? steelyard::verdict::strained
+                                                          : steelyard::verdict::sound;
     bool const heavy = n_.tail_known && n_.tail_index > heavy_from;
     return n_.effective_size < 5.0             ? steelyard::verdict::broken
            : n_.effective_size < 50.0 || heavy ? steelyard::verdict::strained
@@ -95,6 +107,7 @@ class diagnosis {
     using detail::short_number;
     auto say = [&](finding_kind kind, std::string text) { findings_.push_back({kind, std::move(text)}); };
     double const drawn = static_cast<double>(n_.drawn);
+    if (n_.lineages > 0.0) return judge_lineages();
     if (n_.effective_size < 50.0)
       say(finding_kind::few_effective,
           "The weights are worth " + (n_.effective_size < 1.5 ? "no more than one draw" : "only " + short_number(n_.effective_size) + " equal draws") + " out of " +
@@ -127,6 +140,21 @@ class diagnosis {
                                         " independent groups: an error bar wants at least 8 of them.");
   }
 
+  void judge_lineages() {
+    using detail::short_number;
+    if (n_.far_from_drawn)
+      findings_.push_back({finding_kind::far_from_drawn,
+                           "These weights lie far from those that the states were moved under, and are worth " +
+                               short_number(n_.effective_size) + " of " + short_number(static_cast<double>(n_.drawn)) +
+                               " equal ones: error bars can be far too small. Run again with the readings that are asked about."});
+    if (n_.lineages < 20.0)
+      findings_.push_back({finding_kind::few_groups,
+                           "The states descend from only " + short_number(n_.lineages) +
+                               " effective lineages, where error bars want 20: use more chains. Draw one word for each "
+                               "variate (draws.normal(), not a rejection method), or give a move of your own for words "
+                               "that act together."});
+  }
+
   /// How many samples it takes: for answers to settle at all, and, where that can be said, for an effective size of 50.
   [[nodiscard]] std::string size_advice() const {
     std::string text = "The reading asks for at least about " + detail::short_number(least_size()) +
@@ -146,7 +174,11 @@ class diagnosis {
 /// Plain sentences: what the weights carry, then each finding.
 [[nodiscard]] inline std::string to_string(diagnosis const& d) {
   using detail::short_number;
-  std::string text = std::to_string(d.drawn()) + " samples are worth " +
+  std::string text;
+  if (d.lineages() > 0.0)
+    text = std::to_string(d.drawn()) + " states of a tempered run descend from " + short_number(d.lineages()) + " effective lineages.";
+  else
+    text = std::to_string(d.drawn()) + " samples are worth " +
                      (d.effective_size() < 1.5 ? "no more than one" : short_number(d.effective_size()) + " equal ones") +
                      "; the heaviest holds " + short_number(100.0 * d.largest_share()) + " % of the weight.";
   text += d.verdict() == verdict::sound      ? " The weights can carry questions."

@@ -5,97 +5,64 @@
 #include <cstdint>
 #include <memory>
 #include <string>
+#include <tuple>
 #include <utility>
 #include <vector>
 
-#include <steelyard/harder/ladder.hpp>
-#include <steelyard/harder/tempered_plan.hpp>
+#include <steelyard/harder/climb.hpp>
+#include <steelyard/harder/own_moves.hpp>
+#include <steelyard/harder/tempered_sample.hpp>
 #include <steelyard/run/pipeline.hpp>
-#include <steelyard/run/threads.hpp>
-#include <steelyard/sample/weighted_sample.hpp>
 
 namespace steelyard::inline v1 {
 
-namespace detail {
-
-/// What the last rung left, as a weighted sample: states with counts, lineages as groups.
-template <class Player, class Weighter>
-weighted_sample<typename Player::state> tempered_sample(ladder<Player>& climbed, Weighter const& weighter, executor execute,
-                                                        std::uint64_t seed, std::vector<finding> findings) {
-  using X = typename Player::state;
-  auto origin = std::make_shared<sample_origin>();
-  origin->seed = seed;
-  origin->execute = std::move(execute);
-  origin->how = how_drawn::lineages;
-  origin->calls = climbed.calls();
-  sample_columns columns;
-  for (std::size_t k = 0; k < Player::items; ++k) columns.names.push_back(item_name(weighter, k));
-  columns.scores.resize(Player::items);
-  state_array<X> states;
-  std::vector<std::uint32_t> lineages;
-  for (auto& t : climbed.trails())
-    for (std::size_t v = 0; v < t.visits.size(); ++v) {
-      if (t.visits[v].steps == 0) continue;
-      states.emplace_back(std::move(t.states[v]));
-      for (std::size_t k = 0; k < Player::items; ++k) columns.scores[k].push_back(t.scores[v * Player::items + k]);
-      columns.base.push_back(-t.visits[v].seen.log_likelihood);
-      origin->counts.push_back(t.visits[v].steps);
-      origin->drawn += t.visits[v].steps;
-      lineages.push_back(t.lineage);
-    }
-  columns.log_weights.assign(lineages.size(), 0.0);
-  columns.log_base = climbed.log_evidence();
-  columns.base_known = true;
-  origin->take_labels(lineages);
-  auto influence = std::make_shared<base_influence>();
-  std::vector<std::uint32_t> alive = lineages;
-  std::sort(alive.begin(), alive.end());
-  alive.erase(std::unique(alive.begin(), alive.end()), alive.end());
-  std::size_t next = 0;
-  for (std::size_t e = 0; e < climbed.influence().size(); ++e) {
-    double const d = climbed.influence()[e], square = d * d;
-    if (next < alive.size() && alive[next] == e) {
-      influence->of_group.push_back(d);
-      ++next;
-    } else {
-      influence->rest_squares += square;
-      influence->rest_fourth += square * square;
-      influence->rest_largest = std::max(influence->rest_largest, square);
-    }
-  }
-  origin->influence = std::move(influence);
-  origin->findings = std::move(findings);
-  return weighted_sample<X>(std::make_shared<kept_states<X, state_array<X>>>(std::move(states)), std::move(columns),
-                            std::move(origin), "run_tempered");
-}
-
-}  // namespace detail
-
-template <class Sampler, class Weighter>
-auto run_tempered(pipeline<Sampler, Weighter> const& pipe, tempered_plan const& how = {}) {
+/// Draws, weighs and follows a reading too sharp for plain weighting: chains of the words that the sampler consumes
+/// climb from the prior to the posterior by rising powers of the likelihood, and the sampler is run on each proposal.
+/// Neither its density nor a gradient is asked for.
+///   rungs      conditional effective size held at plan.share       [Del Moral, Doucet & Jasra 2006; Zhou, Johansen & Aston 2016]
+///   moves      on recorded words, all in balance with the prior    [Kelemen et al. 2002; Cotter, Roberts, Stuart & White 2013]
+///   answer     every state of every chain on the last rung         [Dau & Chopin 2022]
+///   errors     from lineages of the prior draws                    [Chan & Lai 2013; Lee & Whiteley 2018]
+/// Answers a weighted sample of equal weights, each state with how many steps a chain stayed there as its count.
+/// @param own  moves of the user's: refresh_together, exact_draw
+/// @throws hidden_state  where a draw comes out differently when its words are played again
+/// @throws no_likelihood where no prior draw has any likelihood
+/// @throws failed_sample, bad_weight, bad_argument, stopped_early as a plain run does
+/// Assumes  prior draws that see every mode: a narrow mode that none of them hints at is missed, and nothing can notice.
+/// Cost     about two thousand calls and chains x length a rung; memory of 8 bytes for each word of each state on a rung.
+template <class Sampler, class Weighter, class... Moves>
+auto run_tempered(pipeline<Sampler, Weighter> const& pipe, tempered_plan const& how, Moves const&... own) {
+  static_assert((detail::is_own_move<Moves> && ...),
+                "steelyard: run_tempered() takes moves of your own as sy::refresh_together{first, size} or "
+                "sy::exact_draw(first, size, f)");
   using player = detail::word_player<Sampler, Weighter, detail::no_margin>;
-  using worker = detail::mover<player>;
-  detail::ladder_terms terms;
-  terms.seed = how.seed;
-  terms.chains = static_cast<std::size_t>(how.chains.value());
-  terms.draws = how.draws == 0u ? std::max<std::size_t>(2000, 10 * terms.chains) : static_cast<std::size_t>(how.draws.value());
-  terms.shortest = how.shortest;
-  terms.longest = how.longest;
-  terms.share = how.share;
+  using worker = detail::mover<player, Moves...>;
+  detail::refuse_plan("run_tempered", how);
+  detail::ladder_terms terms = detail::terms_of(how, "run_tempered");
+  terms.own = {detail::block_of(own)...};
+  std::tuple<Moves...> const moves(own...);
   executor const execute = how.executor ? how.executor : on_threads(how.threads);
+  detail::rung_watch const watch(how);
   detail::worker_pool<worker> pool([&] {
-    return std::make_unique<worker>(terms.seed, terms.run, pipe.sampler(), pipe.weighter(), detail::no_margin{}, terms.seed,
-                                    how.on_failure);
+    return std::make_unique<worker>(terms.run, moves, pipe.sampler(), pipe.weighter(), detail::no_margin{}, how.on_failure);
   });
-  detail::ladder<player> climbing(terms, execute, pool);
+  detail::ladder<worker> climbing(terms, execute, pool);
+  std::vector<detail::rung_settings> record;
   climbing.draw();
-  while (climbing.target().power < 1.0) {
-    double const most = 1.0 - climbing.target().power;
-    double const step = detail::longest_step(climbing.log_likelihoods(), climbing.counts(), most, terms.share);
-    bool const last = !(step < most);
-    climbing.climb({last ? 1.0 : climbing.target().power + step}, last);
+  char const* ended = detail::temper(climbing, watch, !how.frozen, record);
+  if (how.frozen && ended == nullptr) {
+    climbing.begin_again(detail::seed_after_pilot(terms.seed));
+    climbing.draw();
+    ended = detail::repeat(climbing, watch, record);
   }
-  return detail::tempered_sample(climbing, pipe.weighter(), execute, terms.seed, {});
+  std::vector<finding> findings = detail::findings_of(climbing);
+  if (ended != nullptr) findings.push_back(detail::stopped_finding(climbing, ended));
+  if (ended != nullptr) climbing.keep_all();
+  return detail::sample_of_ladder(climbing, pipe.sampler(), pipe.weighter(), how.on_failure, std::move(findings));
+}
+template <class Sampler, class Weighter>
+auto run_tempered(pipeline<Sampler, Weighter> const& pipe) {
+  return run_tempered(pipe, tempered_plan{});
 }
 
 }  // namespace steelyard::inline v1

@@ -30,7 +30,7 @@ struct no_margin {
 
 /// Where fresh words come from when a sampler reads past the recorded ones.
 struct word_seat {
-  std::uint64_t stream = 0;
+  std::uint64_t seed = 1, stream = 0;
   purpose what = purpose::run;
   std::uint64_t round = 0;
 };
@@ -78,16 +78,17 @@ class word_player {
   using state = state_of_t<Sampler>;
   static constexpr std::size_t items = item_count<Weighter>();
 
-  word_player(Sampler const& draw, Weighter const& weigh_with, Margin const& margin_of, std::uint64_t seed, failures on_failure)
+  word_player(Sampler const& draw, Weighter const& weigh_with, Margin const& margin_of, failures on_failure)
       : sampler_(instance_of<Sampler>::make(draw)), weighter_(instance_of<Weighter>::make(weigh_with)),
-        margin_(instance_of<Margin>::make(margin_of)), seed_(seed), on_failure_(on_failure), draws_(seed) {}
+        margin_(instance_of<Margin>::make(margin_of)),
+        on_failure_(on_failure), draws_(0) {}
 
   /// Runs the sampler on `record`, which is cut to the words it used, and calls take(state&&, mark, scores).
   /// @returns false where the run failed and is set aside: `take` is not called then.
   template <class Take>
   bool play(std::vector<std::uint64_t>& record, word_seat const& fresh, call_site const& site, Take take) {
     ++calls_;
-    draws_access::record(draws_, record, seed_, fresh.stream, fresh.what, fresh.round);
+    draws_access::record(draws_, record, fresh.seed, fresh.stream, fresh.what, fresh.round);
     char const* stage = "the sampler";
     bool made = false;
     try {
@@ -95,7 +96,7 @@ class word_player {
       record.resize(static_cast<std::size_t>(draws_.words_used()));
       if constexpr (unwrap_optional<result_t<Sampler, draws&>>::may_be_empty) {
         if (!drawn.has_value()) {
-          if (on_failure_ == failures::set_aside) return false;
+          if (on_failure_ == failures::set_aside) return ++failed_, false;
           throw located{site.unit, std::make_exception_ptr(failed_sample(
                                        std::string(site.run) + ": the sampler in " + site.text() + " returned no state", site.unit))};
         }
@@ -110,12 +111,15 @@ class word_player {
       throw_from_call(stage, site);
     } catch (...) {
       if (made || on_failure_ != failures::set_aside) throw_from_call(stage, site);
+      ++failed_;
       return false;
     }
   }
 
-  /// Calls of the sampler since the last time this was asked.
-  [[nodiscard]] std::uint64_t take_calls() noexcept { return std::exchange(calls_, 0); }
+  /// Calls of the sampler, and failed ones that were set aside, since the last time this was asked.
+  [[nodiscard]] std::pair<std::uint64_t, std::uint64_t> take_calls() noexcept {
+    return {std::exchange(calls_, 0), std::exchange(failed_, 0)};
+  }
 
  private:
   template <class Drawn, class Take>
@@ -136,10 +140,9 @@ class word_player {
   instance_t<Sampler> sampler_;
   instance_t<Weighter> weighter_;
   instance_t<Margin> margin_;
-  std::uint64_t seed_;
   failures on_failure_;
   draws draws_;
-  std::uint64_t calls_ = 0;
+  std::uint64_t calls_ = 0, failed_ = 0;
 };
 
 }  // namespace steelyard::inline v1::detail

@@ -115,10 +115,14 @@ struct sample_origin {
   }
 };
 
-/// Whether the weights carry so little of what a tempered run moved that their
-/// sums may have no variance: less than the half that the run itself allows a rung.
-inline bool far_from_drawn(weight_totals const& totals, sample_origin const& origin) noexcept {
-  return origin.how == how_drawn::lineages && totals.effective_size() < 0.5 * (totals.samples - totals.zeros);
+/// Whether the weights of a tempered sample lie so far from those it was moved under that their sums may have no
+/// variance: they carry less than the half that the run itself allows a rung, or their tail is that heavy.
+inline bool far_from_drawn(weight_totals const& totals, sample_origin const& origin) {
+  if (origin.how != how_drawn::lineages) return false;
+  double const some = totals.samples - totals.zeros;
+  if (totals.effective_size() < 0.5 * some) return true;
+  pareto_tail const tail = tail_of(totals.largest, some);
+  return tail.known && tail.shape > 0.5;
 }
 
 /// Findings for what the readings in a weighter have to say against themselves.
@@ -163,6 +167,12 @@ inline diagnosis diagnosis_of(weight_totals const& totals, sample_origin const& 
   n.tail_error = tail.standard_error;
   n.tail_known = tail.known;
   n.bounded = bounded;
+  if (origin.how == how_drawn::lineages) {
+    double squares = 0.0;
+    for (double const share : origin.group_shares) squares += share * share;
+    n.lineages = 1.0 / squares;
+    n.far_from_drawn = far_from_drawn(totals, origin);
+  }
   return diagnosis(n, std::move(findings));
 }
 
