@@ -43,7 +43,8 @@ ensemble made(std::size_t n, std::uint64_t seed, std::uint64_t largest_count = 4
 }
 auto weighed(ensemble const& e, bool counts, bool groups) {
   return sy::weigh(e.states, law::read_one,
-                   {.prior_weights = e.prior, .counts = counts ? e.counts : std::vector<std::uint64_t>{},
+                   {.prior_weights = e.prior,
+                    .counts = counts ? e.counts : std::vector<std::uint64_t>{},
                     .groups = groups ? e.groups : std::vector<std::uint32_t>{}});
 }
 void check_close(law::all_estimates const& a, law::all_estimates const& b, double relative = 1e-9) {
@@ -66,8 +67,41 @@ TEST_CASE("toolbox: one pass gives the bits of the kept sample, on any threads a
     auto const kept = law::toolbox_bits(law::ask_one_pass_toolbox(problem.run({.size = size, .seed = 1})));
     CHECK((law::toolbox_bits(law::ask_one_pass_toolbox(problem, {.size = size, .seed = 1})) == kept));
     CHECK((law::toolbox_bits(law::ask_one_pass_toolbox(problem, {.size = size, .seed = 1, .threads = 2})) == kept));
-    CHECK((law::toolbox_bits(law::ask_one_pass_toolbox(problem, {.size = size, .seed = 1, .executor = law::backwards()})) == kept));
+    CHECK((law::toolbox_bits(
+               law::ask_one_pass_toolbox(problem, {.size = size, .seed = 1, .executor = law::backwards()})) == kept));
   }
+}
+
+TEST_CASE("toolbox: replicates are the groups of every question") {
+  struct in_turn final
+      : sy::word_source {  // eight replicates, each sample in the next; their first words agree in part
+    void fill(std::uint64_t seed, std::uint64_t sample, std::uint64_t first,
+              std::span<std::uint64_t> out) const override {
+      for (std::size_t k = 0; k < out.size(); ++k) {
+        sy::draws own(seed, sample, sy::purpose::run, first + k),
+            shared(seed, sample % 8, sy::purpose::randomise, first + k);
+        out[k] = (own() >> 1) + (shared() >> 3);
+      }
+    }
+    std::uint64_t replicates() const override { return 8; }
+    std::uint64_t replicate_of(std::uint64_t sample) const override { return sample % 8; }
+  };
+  sy::plan const plan{.size = 4000, .seed = 3, .source = std::make_shared<in_turn const>()};
+  auto const kept = problem.run(plan);
+  CHECK((law::toolbox_bits(law::ask_one_pass_toolbox(problem, plan)) ==
+         law::toolbox_bits(law::ask_one_pass_toolbox(kept))));
+  for (sy::estimate const& e : law::estimates_of(law::ask_toolbox(kept))) {
+    if (e.never_seen() || e.always_seen()) continue;
+    CHECK(e.groups() == 8.0);
+    CHECK(e.degrees_of_freedom == 7.0);
+  }
+  std::vector<std::uint32_t> labels;
+  for (std::uint32_t i = 0; i < 4000; ++i) labels.push_back(i % 8);
+  auto const labelled =
+      sy::weigh(std::vector<double>(kept.states().begin(), kept.states().end()), law::read_one, {.groups = labels});
+  auto const a = labelled.correlation(law::itself, law::scaled_square),
+             b = kept.correlation(law::itself, law::scaled_square);
+  CHECK(close(a, b, 1e-10));  // eight equal groups: 1/(1 - sum m^2) is R/(R - 1)
 }
 
 TEST_CASE("toolbox: a run stopped, written out and taken up again gives the bits of one that never stopped") {
@@ -95,7 +129,7 @@ TEST_CASE("toolbox: the tail index does not depend on threads, order or keeping"
   sy::pipeline const heavy{[](sy::draws& draws) { return draws.exponential(1.0); },
                            [](double x) { return sy::log_likelihood{0.6 * x}; }};
   sy::plan const plan{.size = 60'000, .seed = 5};
-    auto const sampled = heavy.run(plan);
+  auto const sampled = heavy.run(plan);
   double const index = sampled.diagnosis().tail_index();
   CHECK(index > 0.3);
   CHECK(heavy.estimate(plan, sy::health()).get<0>().tail_index() == index);
@@ -124,8 +158,9 @@ TEST_CASE("toolbox: the order of the samples changes nothing but rounding") {
     }
     auto const after = weighed(other, true, grouped);
     auto const ask = [](auto const& sample) {
-      return law::estimates_of(std::apply([&](auto const&... each) { return sample.estimate(each..., sy::cumulative(law::itself)); },
-                                          law::one_pass_toolbox()));
+      return law::estimates_of(
+          std::apply([&](auto const&... each) { return sample.estimate(each..., sy::cumulative(law::itself)); },
+                     law::one_pass_toolbox()));
     };
     check_close(ask(before), ask(after));
     // Parts of a shortest interval follow the order unless there are groups; the interval itself never does.
@@ -148,7 +183,8 @@ TEST_CASE("toolbox: counts are the repeated sample, values and errors") {
           repeated.prior.push_back(e.prior[i]);
           repeated.groups.push_back(e.groups[i]);
         }
-      auto const a = law::ask_toolbox(weighed(e, true, grouped)), b = law::ask_toolbox(weighed(repeated, false, grouped));
+      auto const a = law::ask_toolbox(weighed(e, true, grouped)),
+                 b = law::ask_toolbox(weighed(repeated, false, grouped));
       check_close(law::estimates_of(a), law::estimates_of(b));
       CHECK(a.diagnosis().tail_known() == b.diagnosis().tail_known());
       CHECK(a.diagnosis().tail_index() == b.diagnosis().tail_index());
@@ -166,13 +202,16 @@ TEST_CASE("toolbox: a weight doubled is the sample added twice, for values") {
   for (std::size_t i = 0; i < 100; ++i) doubled.prior[i] *= 2.0;
   auto const a = weighed(twice, false, false), b = weighed(doubled, false, false);
   CHECK(close(a.moments(law::itself).skewness.value, b.moments(law::itself).skewness.value, 1e-10));
-  CHECK(close(a.correlation(law::itself, law::scaled_square).value, b.correlation(law::itself, law::scaled_square).value, 1e-10));
+  CHECK(close(a.correlation(law::itself, law::scaled_square).value,
+              b.correlation(law::itself, law::scaled_square).value, 1e-10));
   CHECK(a.shortest_interval(law::itself, 0.6).lower.value == b.shortest_interval(law::itself, 0.6).lower.value);
   CHECK(close(a.cumulative(law::itself).at(0.3).value, b.cumulative(law::itself).at(0.3).value, 1e-12));
   CHECK(close(a.histogram_2d(law::itself, law::scaled_square, sy::equal_bins(0.0, 1.0, 2), sy::equal_bins(0.0, 1.0, 2))
-                  .probability(0, 0).value,
+                  .probability(0, 0)
+                  .value,
               b.histogram_2d(law::itself, law::scaled_square, sy::equal_bins(0.0, 1.0, 2), sy::equal_bins(0.0, 1.0, 2))
-                  .probability(0, 0).value,
+                  .probability(0, 0)
+                  .value,
               1e-12));
 }
 
@@ -181,8 +220,9 @@ TEST_CASE("toolbox: groups of one sample each are no groups") {
   for (std::size_t i = 0; i < e.groups.size(); ++i) e.groups[i] = static_cast<std::uint32_t>(7 * i);
   auto const plain = weighed(e, false, false), grouped = weighed(e, false, true);
   auto const ask = [](auto const& sample) {
-    return law::estimates_of(std::apply([&](auto const&... each) { return sample.estimate(each..., sy::cumulative(law::itself)); },
-                                        law::one_pass_toolbox()));
+    return law::estimates_of(
+        std::apply([&](auto const&... each) { return sample.estimate(each..., sy::cumulative(law::itself)); },
+                   law::one_pass_toolbox()));
   };
   check_close(ask(plain), ask(grouped), 1e-8);
 }
@@ -204,7 +244,8 @@ TEST_CASE("toolbox: shift and scale of the readout") {
       CHECK(close(b.kurtosis.value, a.kurtosis.value, 1e-9));
       CHECK(close(b.kurtosis.standard_error, a.kurtosis.standard_error, 1e-9));
       CHECK(close(b.kurtosis.carriers, a.kurtosis.carriers, 1e-8));
-      auto const r = sample.correlation(law::itself, law::scaled_square), q = sample.correlation(moved, law::scaled_square);
+      auto const r = sample.correlation(law::itself, law::scaled_square),
+                 q = sample.correlation(moved, law::scaled_square);
       CHECK(close(q.value, sign * r.value, 1e-9));
       CHECK(close(q.standard_error, r.standard_error, 1e-9));
       auto const s = sample.shortest_interval(law::itself, 0.9), t = sample.shortest_interval(moved, 0.9);
@@ -283,7 +324,9 @@ TEST_CASE("toolbox: an ensemble that holds every state once answers like the sam
   check_close(law::estimates_of(law::ask_toolbox(sample)), law::estimates_of(law::ask_toolbox(all.as_sample())));
   auto const weighted = weighed(made(800, 27), false, false);
   auto const kept = weighted.resample(5000, {.scheme = sy::scheme::priority});  // more than there are: each once, exact
-  check_close(law::estimates_of(std::apply([&](auto const&... each) { return weighted.estimate(each...); }, law::one_pass_toolbox())),
-              law::estimates_of(std::apply([&](auto const&... each) { return kept.estimate(each...); }, law::one_pass_toolbox())),
+  check_close(law::estimates_of(
+                  std::apply([&](auto const&... each) { return weighted.estimate(each...); }, law::one_pass_toolbox())),
+              law::estimates_of(
+                  std::apply([&](auto const&... each) { return kept.estimate(each...); }, law::one_pass_toolbox())),
               1e-2);  // the parent counts its states of weight zero among n in n/(n-1)
 }

@@ -95,9 +95,11 @@ TEST_CASE("moments: certified mean and standard deviation, NIST StRD univariate 
 
 TEST_CASE("moments: Boost.Accumulators agrees on weighted mean, variance, skewness, kurtosis and covariance") {
   namespace acc = boost::accumulators;
-  using set = acc::accumulator_set<double, acc::stats<acc::tag::weighted_mean, acc::tag::weighted_variance, acc::tag::weighted_skewness,
-                                                      acc::tag::weighted_kurtosis,
-                                                      acc::tag::weighted_covariance<double, acc::tag::covariate1>>, double>;
+  using set = acc::accumulator_set<
+      double,
+      acc::stats<acc::tag::weighted_mean, acc::tag::weighted_variance, acc::tag::weighted_skewness,
+                 acc::tag::weighted_kurtosis, acc::tag::weighted_covariance<double, acc::tag::covariate1>>,
+      double>;
   for (std::size_t const n : {3u, 50u, 5000u}) {
     weighted_data const d = made(n, 31);
     set boost;
@@ -157,15 +159,20 @@ TEST_CASE("moments: error bars are those of the influence functions, term by ter
     long double const s = m3 / std::pow(m2, 1.5L), k = m4 / (m2 * m2);
     auto const z = [&](long double x) { return (x - mean) / std::sqrt(m2); };
     double const tight = centre == 1e6 ? 1e-7 : 1e-10;
-    check_error(m.mean, d, [&](long double x) { return x - mean; }, tight);
-    check_error(m.sd, d, [&](long double x) { return 0.5L * m.sd.value * (z(x) * z(x) - 1.0L); }, tight);
-    check_error(m.skewness, d, [&](long double x) { return z(x) * z(x) * z(x) - 3.0L * z(x) - s - 1.5L * s * (z(x) * z(x) - 1.0L); }, tight);
-    check_error(m.kurtosis, d,
-                [&](long double x) {
-                  long double const t = z(x);
-                  return t * t * t * t - k - 4.0L * s * t - 2.0L * k * (t * t - 1.0L);
-                },
-                tight);
+    check_error(
+        m.mean, d, [&](long double x) { return x - mean; }, tight);
+    check_error(
+        m.sd, d, [&](long double x) { return 0.5L * m.sd.value * (z(x) * z(x) - 1.0L); }, tight);
+    check_error(
+        m.skewness, d,
+        [&](long double x) { return z(x) * z(x) * z(x) - 3.0L * z(x) - s - 1.5L * s * (z(x) * z(x) - 1.0L); }, tight);
+    check_error(
+        m.kurtosis, d,
+        [&](long double x) {
+          long double const t = z(x);
+          return t * t * t * t - k - 4.0L * s * t - 2.0L * k * (t * t - 1.0L);
+        },
+        tight);
     auto const r = sample.correlation(itself, [](double x) { return std::cos(x); });
     if (centre == 1e6) continue;  // the cosine of a rounded argument is another function
     long double mc = 0.0L;
@@ -178,17 +185,21 @@ TEST_CASE("moments: error bars are those of the influence functions, term by ter
     }
     long double const rho = xc / std::sqrt(vc * m2);
     CHECK(close(r.value, static_cast<double>(rho), 1e-11));
-    check_error(r, d,
-                [&](long double x) {
-                  long double const a = z(x), b = (std::cos(static_cast<double>(x)) - mc) / std::sqrt(vc);
-                  return a * b - 0.5L * rho * (a * a + b * b);
-                },
-                1e-9);
+    check_error(
+        r, d,
+        [&](long double x) {
+          long double const a = z(x), b = (std::cos(static_cast<double>(x)) - mc) / std::sqrt(vc);
+          return a * b - 0.5L * rho * (a * a + b * b);
+        },
+        1e-9);
     auto const c = sample.covariance([](double x) { return std::array{x, std::cos(x)}; });
     double const kish = sample.diagnosis().effective_size();
-    check_error(c(0, 1), d, [&](long double x) {
-      return ((x - mean) * (std::cos(static_cast<double>(x)) - mc) - xc) * (kish / (kish - 1.0));
-    }, 1e-9);
+    check_error(
+        c(0, 1), d,
+        [&](long double x) {
+          return ((x - mean) * (std::cos(static_cast<double>(x)) - mc) - xc) * (kish / (kish - 1.0));
+        },
+        1e-9);
   }
 }
 
@@ -214,7 +225,7 @@ TEST_CASE("correlation: Anscombe's first set, and its error interval stays withi
   struct pair {
     double x, y;
   };
-  std::vector<pair> const set{{10, 8.04}, {8, 6.95}, {13, 7.58}, {9, 8.81}, {11, 8.33}, {14, 9.96},
+  std::vector<pair> const set{{10, 8.04}, {8, 6.95}, {13, 7.58},  {9, 8.81}, {11, 8.33}, {14, 9.96},
                               {6, 7.24},  {4, 4.26}, {12, 10.84}, {7, 4.82}, {5, 5.68}};
   auto const r = sy::weigh(set, [](pair const&) { return sy::likelihood{1.0}; }).correlation(&pair::x, &pair::y);
   CHECK(r.value == doctest::Approx(0.816421).epsilon(1e-6));
@@ -227,9 +238,11 @@ TEST_CASE("correlation: Anscombe's first set, and its error interval stays withi
   }
   // Symmetric in atanh r, the linear interval to first order.
   sy::interval const narrow = r.error_interval(0.01);
-  CHECK(std::atanh(narrow.upper) + std::atanh(narrow.lower) == doctest::Approx(2.0 * std::atanh(r.value)).epsilon(1e-10));
+  CHECK(std::atanh(narrow.upper) + std::atanh(narrow.lower) ==
+        doctest::Approx(2.0 * std::atanh(r.value)).epsilon(1e-10));
   CHECK(narrow.upper - narrow.lower ==
-        doctest::Approx(static_cast<sy::estimate const&>(r).error_interval(0.01).upper * 2.0 - 2.0 * r.value).epsilon(1e-3));
+        doctest::Approx(static_cast<sy::estimate const&>(r).error_interval(0.01).upper * 2.0 - 2.0 * r.value)
+            .epsilon(1e-3));
 }
 
 TEST_CASE("correlation: exactly one, and undefined where a readout does not vary") {
@@ -251,7 +264,8 @@ TEST_CASE("covariance: sixteen numbers at once, each entry as if asked alone") {
   auto const sample = weighed(d);
   auto const all = [](double x) {
     std::array<double, 16> a{};
-    for (std::size_t k = 0; k < a.size(); ++k) a[k] = std::sin(static_cast<double>(k + 1) * x) + 0.1 * static_cast<double>(k) * x;
+    for (std::size_t k = 0; k < a.size(); ++k)
+      a[k] = std::sin(static_cast<double>(k + 1) * x) + 0.1 * static_cast<double>(k) * x;
     return a;
   };
   auto const c = sample.covariance(all);

@@ -58,7 +58,8 @@ TEST_CASE("resampling: exact variances of the mean, Douc, Cappe & Moulines 2005"
   CHECK(exact(sy::scheme::systematic) == doctest::Approx(0.1).epsilon(1e-13));
   // Where steps and order agree, one uniform number does worse than independent draws.
   std::vector<double> const quarter(4, 0.25), turn{1.0, 0.0, 1.0, 0.0};
-  CHECK(detail::resampling_variance(sy::scheme::multinomial, quarter, turn, 2) == doctest::Approx(0.125).epsilon(1e-14));
+  CHECK(detail::resampling_variance(sy::scheme::multinomial, quarter, turn, 2) ==
+        doctest::Approx(0.125).epsilon(1e-14));
   CHECK(detail::resampling_variance(sy::scheme::systematic, quarter, turn, 2) == doctest::Approx(0.25).epsilon(1e-14));
   CHECK(detail::resampling_variance(sy::scheme::stratified, quarter, turn, 2) == doctest::Approx(0.125).epsilon(1e-14));
 }
@@ -74,7 +75,8 @@ TEST_CASE("resampling: variances do not depend on the unit of the weights, and z
   for (sy::scheme const how : with_replacement)
     for (std::size_t const k : {1u, 2u, 5u, 16u, 33u}) {
       CAPTURE(k);
-      CHECK(detail::resampling_variance(how, w, f, k) == doctest::Approx(detail::resampling_variance(how, some, same, k)).epsilon(1e-12));
+      CHECK(detail::resampling_variance(how, w, f, k) ==
+            doctest::Approx(detail::resampling_variance(how, some, same, k)).epsilon(1e-12));
     }
 }
 
@@ -131,10 +133,12 @@ TEST_CASE("resampling: residual keeps whole copies for certain, however rounding
 }
 
 TEST_CASE("resampling: inclusion without replacement") {
-  // weights 1, 2, 3, two kept. Successive draws: 5/12, 11/15, 17/20 (Efraimidis & Spirakis 2006). Priority, keys w/U: item i
-  // is left out when U_i/w_i is the largest of three independent uniforms on (0, 1/w): 77/108, 23/108, 8/108 by hand.
+  // weights 1, 2, 3, two kept. Successive draws: 5/12, 11/15, 17/20 (Efraimidis & Spirakis 2006). Priority, keys w/U:
+  // item i is left out when U_i/w_i is the largest of three independent uniforms on (0, 1/w): 77/108, 23/108, 8/108 by
+  // hand.
   std::vector<double> const w{1.0, 2.0, 3.0};
-  std::array<std::array<double, 3>, 2> const exact{{{31.0 / 108.0, 85.0 / 108.0, 100.0 / 108.0}, {5.0 / 12.0, 11.0 / 15.0, 17.0 / 20.0}}};
+  std::array<std::array<double, 3>, 2> const exact{
+      {{31.0 / 108.0, 85.0 / 108.0, 100.0 / 108.0}, {5.0 / 12.0, 11.0 / 15.0, 17.0 / 20.0}}};
   std::uint64_t const repeats = 60'000;
   for (std::size_t s = 0; s < 2; ++s) {
     std::array<double, 3> seen{};
@@ -248,7 +252,8 @@ TEST_CASE("resampling: picks follow the weights, and a picker is a sampler") {
   }
   CHECK(&pick(source) >= sample.states().data());
   static_assert(sy::sampler<sy::picker<double>>);
-  auto const next = sy::pipeline{pick, [](double x) { return sy::likelihood{x}; }}.estimate({.size = 50'000}, sy::expectation(itself));
+  auto const next = sy::pipeline{pick, [](double x) { return sy::likelihood{x}; }}.estimate({.size = 50'000},
+                                                                                            sy::expectation(itself));
   // E x^2 / E x over the weights
   CHECK(law::errors_off(next.get<0>(), (100.0 + 3.0 * 900.0 + 4.0 * 1600.0) / (10.0 + 90.0 + 160.0)) < 5.0);
   auto const counted = sy::weigh(states, flat, {.prior_weights = prior, .counts = {8, 9, 1, 1}});
@@ -270,13 +275,16 @@ TEST_CASE("resampling: a picker of a sample that kept its streams only gives pos
 
 TEST_CASE("resampling: the same seed gives the same slots, shuffled or not, kept or replayed") {
   sy::pipeline const pipe{law::draw_normal, law::read_one};
-  auto const kept = pipe.run({.size = 3000, .seed = 2}), replayed = pipe.run({.size = 3000, .seed = 2, .keep = sy::keeping::streams});
-  for (sy::scheme const how : {sy::scheme::systematic, sy::scheme::multinomial, sy::scheme::stratified, sy::scheme::residual,
-                               sy::scheme::priority, sy::scheme::successive}) {
+  auto const kept = pipe.run({.size = 3000, .seed = 2}),
+             replayed = pipe.run({.size = 3000, .seed = 2, .keep = sy::keeping::streams});
+  for (sy::scheme const how : {sy::scheme::systematic, sy::scheme::multinomial, sy::scheme::stratified,
+                               sy::scheme::residual, sy::scheme::priority, sy::scheme::successive}) {
     CAPTURE(static_cast<int>(how));
-    auto const a = kept.resample(500, {.seed = 3, .scheme = how}), b = replayed.resample(500, {.seed = 3, .scheme = how});
+    auto const a = kept.resample(500, {.seed = 3, .scheme = how}),
+               b = replayed.resample(500, {.seed = 3, .scheme = how});
     auto const plain = kept.resample(500, {.seed = 3, .scheme = how, .shuffled = false});
-    CHECK(std::vector<std::size_t>(a.indices().begin(), a.indices().end()) == std::vector<std::size_t>(b.indices().begin(), b.indices().end()));
+    CHECK(std::vector<std::size_t>(a.indices().begin(), a.indices().end()) ==
+          std::vector<std::size_t>(b.indices().begin(), b.indices().end()));
     CHECK(a.copies() == plain.copies());
     CHECK(std::is_sorted(plain.indices().begin(), plain.indices().end()));
     CHECK_FALSE(std::is_sorted(a.indices().begin(), a.indices().end()));
@@ -285,7 +293,8 @@ TEST_CASE("resampling: the same seed gives the same slots, shuffled or not, kept
       CHECK(a[s] == kept.states()[a.indices()[s]]);
       CHECK(a[s] == b[s]);
       if (a.weights().empty()) continue;
-      auto const at = std::lower_bound(plain.indices().begin(), plain.indices().end(), a.indices()[s]) - plain.indices().begin();
+      auto const at =
+          std::lower_bound(plain.indices().begin(), plain.indices().end(), a.indices()[s]) - plain.indices().begin();
       CHECK(a.weights()[s] == plain.weights()[static_cast<std::size_t>(at)]);
     }
     CHECK(close(a.expectation(itself), b.expectation(itself), 1e-12));
@@ -300,11 +309,12 @@ TEST_CASE("resampling: an ensemble's error is the parent's and the draw's, and i
   auto const drawn = sample.resample(2000, {.scheme = sy::scheme::multinomial});
   double const expected = std::sqrt(parent * parent + sd * sd / 2000.0);
   CHECK(drawn.expectation(itself).standard_error == doctest::Approx(expected).epsilon(0.02));
-  for (sy::scheme const how : {sy::scheme::multinomial, sy::scheme::stratified, sy::scheme::systematic, sy::scheme::priority, sy::scheme::successive}) {
+  for (sy::scheme const how : {sy::scheme::multinomial, sy::scheme::stratified, sy::scheme::systematic,
+                               sy::scheme::priority, sy::scheme::successive}) {
     CAPTURE(static_cast<int>(how));
     auto const all = sample.resample(2000, {.scheme = how});
-    auto const [mean, median, moments, share] =
-        all.estimate(sy::expectation(itself), sy::quantile(itself, 0.5), sy::moments(itself), sy::probability(law::above_one));
+    auto const [mean, median, moments, share] = all.estimate(sy::expectation(itself), sy::quantile(itself, 0.5),
+                                                             sy::moments(itself), sy::probability(law::above_one));
     CHECK(mean.standard_error == doctest::Approx(expected).epsilon(0.08));
     CHECK(law::errors_off(mean, 0.5) < 5.0);
     CHECK(law::errors_off(median, 0.5) < 5.0);
@@ -324,7 +334,8 @@ TEST_CASE("resampling: an ensemble's error is the parent's and the draw's, and i
 
 TEST_CASE("resampling: an ensemble is what was known before a further reading") {
   sy::pipeline const pipe{law::draw_normal, law::read_one};
-  auto const before = pipe.run({.size = 50'000, .seed = 6}).resample(20'000, {.scheme = sy::scheme::stratified}).as_sample();
+  auto const before =
+      pipe.run({.size = 50'000, .seed = 6}).resample(20'000, {.scheme = sy::scheme::stratified}).as_sample();
   CHECK(before.log_evidence().value == doctest::Approx(0.0).epsilon(1e-12));
   auto const after = before.reweigh(law::read_one);
   CHECK(law::errors_off(after.expectation(itself), 2.0 / 3.0) < 5.0);  // two readings of 1 and the prior N(0, 1)
@@ -362,7 +373,9 @@ TEST_CASE("resampling: counted states draw like the repeated sample, errors too"
 
 TEST_CASE("resampling: refusals") {
   auto const sample = sy::weigh(std::vector<double>{1.0, 2.0}, flat);
-  for (sy::scheme const how : {sy::scheme::stratified, sy::scheme::residual, sy::scheme::priority, sy::scheme::successive})
-    CHECK(law::holds(law::said<sy::bad_argument>([&] { sample.resample(0, {.scheme = how}); }), "0 states were asked for"));
+  for (sy::scheme const how :
+       {sy::scheme::stratified, sy::scheme::residual, sy::scheme::priority, sy::scheme::successive})
+    CHECK(law::holds(law::said<sy::bad_argument>([&] { sample.resample(0, {.scheme = how}); }),
+                     "0 states were asked for"));
   CHECK(law::holds(law::said<sy::not_kept>([&] { sample.resample(2).as_sample().states(); }), "states"));
 }

@@ -152,7 +152,10 @@ TEST_CASE("distribution function: chosen points, and what is refused") {
   CHECK(at.shares[4].always_seen());
   CHECK(holds(said<sy::bad_argument>([] { (void)sy::cumulative(itself, {}); }), "at least one is needed"));
   CHECK(holds(said<sy::bad_argument>([] { (void)sy::cumulative(itself, {1.0, 1.0}); }), "point 1 is 1"));
-  CHECK(holds(said<sy::bad_argument>([] { (void)sy::cumulative(itself, {0.0, law::not_a_number()}); }), "rise strictly"));
+  CHECK(holds(said<sy::bad_argument>([] {
+                (void)sy::cumulative(itself, {0.0, law::not_a_number()});
+              }),
+              "rise strictly"));
 }
 
 TEST_CASE("mode: the bin of highest density, not of most weight") {
@@ -197,7 +200,8 @@ TEST_CASE("mode: groups carry its error") {
     x.push_back(i / 200 < 8 ? 0.25 : i / 200 < 14 ? 0.75 : 1.25);
   }
   auto const bins = sy::equal_bins(0.0, 1.5, 3);
-  auto const grouped = sy::weigh(x, flat, {.groups = groups}).mode(itself, bins), alone = sy::weigh(x, flat).mode(itself, bins);
+  auto const grouped = sy::weigh(x, flat, {.groups = groups}).mode(itself, bins),
+             alone = sy::weigh(x, flat).mode(itself, bins);
   CHECK(alone.rivals(0.95).empty());
   CHECK(grouped.rivals(0.95).size() == 2);
   // u = 1{top} - 1{other} - lead over twenty equal groups, by hand: lead 8/20 - 6/20
@@ -209,7 +213,8 @@ TEST_CASE("histogram in two dimensions: cells, edges and what lies outside") {
   struct point {
     double x, y;
   };
-  std::vector<point> const points{{0.5, 0.5}, {1.5, 0.5}, {1.5, 1.0}, {2.0, 2.0}, {-1.0, 0.5}, {0.5, 3.0}, {5.0, -5.0}, {0.5, law::not_a_number()}};
+  std::vector<point> const points{{0.5, 0.5},  {1.5, 0.5}, {1.5, 1.0},  {2.0, 2.0},
+                                  {-1.0, 0.5}, {0.5, 3.0}, {5.0, -5.0}, {0.5, law::not_a_number()}};
   std::vector<double> const w{1, 2, 3, 4, 5, 6, 7, 8};
   auto const sample = sy::weigh(points, [](point const&) { return sy::likelihood{1.0}; }, {.prior_weights = w});
   auto const h = sample.histogram_2d(&point::x, &point::y, sy::equal_bins(0.0, 2.0, 2), sy::bins({0.0, 1.0, 2.0}));
@@ -228,7 +233,8 @@ TEST_CASE("histogram in two dimensions: cells, edges and what lies outside") {
   CHECK(h.outside().value == doctest::Approx(26.0 / 36.0));
   // se^2 = n/(n-1) sum W^2 (1 - p)^2
   double squares = 0.0;
-  for (std::size_t i = 0; i < 8; ++i) squares += std::pow(w[i] / 36.0 * ((i == 2 || i == 3 ? 1.0 : 0.0) - 7.0 / 36.0), 2);
+  for (std::size_t i = 0; i < 8; ++i)
+    squares += std::pow(w[i] / 36.0 * ((i == 2 || i == 3 ? 1.0 : 0.0) - 7.0 / 36.0), 2);
   CHECK(h.probability(1, 1).standard_error == doctest::Approx(std::sqrt(squares * 8.0 / 7.0)).epsilon(1e-12));
   CHECK(h.x_edges_chosen() == sy::edge_choice::given);
   CHECK(holds(to_string(h), "outside: 0.72"));

@@ -65,9 +65,8 @@ inline void put(all_bits& to, sy::histogram_2d_result const& h) {
 template <class... As>
 all_bits toolbox_bits(sy::answers<As...> const& answers) {
   all_bits all;
-  [&]<std::size_t... I>(std::index_sequence<I...>) {
-    (put(all, answers.template get<I>()), ...);
-  }(std::index_sequence_for<As...>());
+  [&]<std::size_t... I>(std::index_sequence<I...>) { (put(all, answers.template get<I>()), ...); }
+  (std::index_sequence_for<As...>());
   put(all, answers.diagnosis());
   put(all, answers.diagnosis().tail_index());
   return all;
@@ -105,9 +104,8 @@ all_estimates estimates_of(sy::answers<As...> const& answers) {
   auto const take = [&](auto const& one) {
     for (sy::estimate const& each : estimates_of(one)) all.push_back(each);
   };
-  [&]<std::size_t... I>(std::index_sequence<I...>) {
-    (take(answers.template get<I>()), ...);
-  }(std::index_sequence_for<As...>());
+  [&]<std::size_t... I>(std::index_sequence<I...>) { (take(answers.template get<I>()), ...); }
+  (std::index_sequence_for<As...>());
   return all;
 }
 

@@ -51,7 +51,8 @@ TEST_CASE("tail: Danish fire losses, McNeil, ASTIN Bulletin 27(1), 1997") {
     std::size_t n;
     double shape, scale, likelihood_shape, its_error;
   };
-  for (row const& r : {row{3.0, 532, 0.668923714994, 2.186323341054, 0.66761, 0.0731}, row{10.0, 109, 0.514148637022, 6.857327648161, 0.496986, 0.1363}}) {
+  for (row const& r : {row{3.0, 532, 0.668923714994, 2.186323341054, 0.66761, 0.0731},
+                       row{10.0, 109, 0.514148637022, 6.857327648161, 0.496986, 0.1363}}) {
     auto const x = excesses(r.threshold);
     REQUIRE(x.size() == r.n);
     sy::pareto_tail const tail = sy::fit_pareto_tail(x);
@@ -69,7 +70,8 @@ TEST_CASE("tail: quantiles of the law itself, Zhang & Stephens, Technometrics 51
     int n;
     double fitted_shape, fitted_scale;
   };
-  for (row const& r : {row{0.2, 100, 0.215375535532620, 0.980905479447337}, row{0.7, 1000, 0.699709746113259, 0.999701111213427}}) {
+  for (row const& r :
+       {row{0.2, 100, 0.215375535532620, 0.980905479447337}, row{0.7, 1000, 0.699709746113259, 0.999701111213427}}) {
     std::vector<double> x;
     for (int i = 1; i <= r.n; ++i) x.push_back((std::pow(1.0 - (i - 0.5) / r.n, -r.shape) - 1.0) / r.shape);
     sy::pareto_tail const tail = sy::fit_pareto_tail(x);
@@ -95,8 +97,10 @@ TEST_CASE("tail: what cannot be fitted, and what is refused") {
   CHECK_FALSE(sy::fit_pareto_tail(std::vector<double>{1.0, 2.0, 3.0, 4.0}).known);
   CHECK_FALSE(sy::fit_pareto_tail(std::vector<double>(50, 0.0)).known);
   CHECK(sy::fit_pareto_tail(std::vector<double>(50, 1.0)).known);
-  for (std::vector<double> const& bad : {std::vector<double>{1.0, 0.5}, {-1.0, 2.0}, {0.0, law::not_a_number()}, {0.0, law::infinity()}})
-    CHECK(holds(said<sy::bad_argument>([&] { (void)sy::fit_pareto_tail(bad); }), "finite, zero or more, and in rising order"));
+  for (std::vector<double> const& bad :
+       {std::vector<double>{1.0, 0.5}, {-1.0, 2.0}, {0.0, law::not_a_number()}, {0.0, law::infinity()}})
+    CHECK(holds(said<sy::bad_argument>([&] { (void)sy::fit_pareto_tail(bad); }),
+                "finite, zero or more, and in rising order"));
 }
 
 TEST_CASE("tail: Pareto weights from end to end") {
@@ -123,20 +127,23 @@ TEST_CASE("tail: how many of the largest weights") {
   // 25 positive weights give the least five; equal ones among the largest leave the tail unknown.
   auto const of = [](std::size_t n) {
     std::vector<double> x;
-    for (std::size_t i = 1; i <= n; ++i) x.push_back(std::pow(1.0 - (static_cast<double>(i) - 0.5) / static_cast<double>(n), -0.4));
+    for (std::size_t i = 1; i <= n; ++i)
+      x.push_back(std::pow(1.0 - (static_cast<double>(i) - 0.5) / static_cast<double>(n), -0.4));
     return sy::weigh(x, [](double w) { return sy::likelihood{w}; }).diagnosis();
   };
   CHECK_FALSE(of(20).tail_known());
   CHECK(of(25).tail_known());
   CHECK(std::abs(of(100'000).tail_index() - 0.4) < 0.02);
-  CHECK_FALSE(sy::weigh(std::vector<double>(1000, 1.0), [](double) { return sy::likelihood{1.0}; }).diagnosis().tail_known());
+  CHECK_FALSE(
+      sy::weigh(std::vector<double>(1000, 1.0), [](double) { return sy::likelihood{1.0}; }).diagnosis().tail_known());
   // The same from the weights by hand: the min(n/5, 3 sqrt n, 256) largest over the next.
   std::vector<double> weights;
   for (std::size_t i = 0; i < 2000; ++i) weights.push_back(std::exp(2.0 * sy::draws(3, i).normal()));
   auto const sample = sy::weigh(weights, [](double w) { return sy::likelihood{w}; });
   std::sort(weights.begin(), weights.end());
   std::vector<double> largest;
-  for (std::size_t i = 2000 - 135; i < 2000; ++i) largest.push_back(weights[i] - weights[2000 - 136]);  // 3 sqrt 2000 = 134.2
+  for (std::size_t i = 2000 - 135; i < 2000; ++i)
+    largest.push_back(weights[i] - weights[2000 - 136]);  // 3 sqrt 2000 = 134.2
   CHECK(sample.diagnosis().tail_index() == doctest::Approx(sy::fit_pareto_tail(largest).shape).epsilon(1e-10));
 }
 
@@ -167,7 +174,8 @@ TEST_CASE("tail: samples that answers ask for at least are exp(KL), Chatterjee &
   struct row {
     double y, s, kl;
   };
-  for (row const& r : {row{0.0, 1.0, 0.0965735902799727}, row{1.0, 1.0, 0.221573590279973}, row{3.0, 0.5, 3.28471895621705}}) {
+  for (row const& r :
+       {row{0.0, 1.0, 0.0965735902799727}, row{1.0, 1.0, 0.221573590279973}, row{3.0, 0.5, 3.28471895621705}}) {
     sy::pipeline const pipe{law::draw_normal, [r](double x) {
                               double const z = (r.y - x) / r.s;
                               return sy::log_likelihood{-0.5 * z * z};
@@ -218,7 +226,8 @@ TEST_CASE("advice: so many more samples, and the standard error is met") {
   REQUIRE(rare.get<0>().verdict() == sy::verdict::strained);
   sy::sample_advice const sound = sy::more_samples(rare.get<0>(), rare.diagnosis());
   REQUIRE(sound.known);
-  CHECK(static_cast<double>(sound.more) == doctest::Approx(1000.0 * (30.0 / rare.get<0>().carriers - 1.0)).epsilon(0.01));
+  CHECK(static_cast<double>(sound.more) ==
+        doctest::Approx(1000.0 * (30.0 / rare.get<0>().carriers - 1.0)).epsilon(0.01));
 }
 
 TEST_CASE("advice: kept back where it would not be honest") {
@@ -241,9 +250,12 @@ TEST_CASE("advice: kept back where it would not be honest") {
   auto const sample = pipe.run({.size = 5000, .seed = 8});
   sy::estimate const never = sample.probability([](double x) { return x > 50.0; });
   CHECK(holds(sy::more_samples(never, sample.diagnosis(), 1e-3).text, "the error bar itself is broken"));
-  CHECK(holds(sy::more_samples(sample.shortest_interval(itself, 0.5).lower, sample.diagnosis(), 1e-3).text, "few groups"));
-  auto const equal = sy::weigh(std::vector<double>(sample.states().begin(), sample.states().end()), [](double) { return sy::likelihood{1.0}; });
+  CHECK(holds(sy::more_samples(sample.shortest_interval(itself, 0.5).lower, sample.diagnosis(), 1e-3).text,
+              "few groups"));
+  auto const equal = sy::weigh(std::vector<double>(sample.states().begin(), sample.states().end()),
+                               [](double) { return sy::likelihood{1.0}; });
   CHECK(holds(sy::more_samples(equal.expectation(itself), equal.diagnosis(), 1e-3).text, "too few weights differ"));
   for (double const bad : {0.0, -1.0, law::not_a_number(), law::infinity()})
-    CHECK(holds(said<sy::bad_argument>([&] { (void)sy::more_samples(e, heavy.diagnosis(), bad); }), "must be a positive finite number"));
+    CHECK(holds(said<sy::bad_argument>([&] { (void)sy::more_samples(e, heavy.diagnosis(), bad); }),
+                "must be a positive finite number"));
 }

@@ -24,14 +24,19 @@ struct sample_advice {
 
 namespace detail {
 
-/// Advice for samples in proportion to `factor`; none where the error bar does not follow n^(-1/2), or cannot be trusted to.
+/// Advice for samples in proportion to `factor`; none where the error bar does not follow n^(-1/2), or cannot be
+/// trusted to.
 inline sample_advice advice_for(estimate const& e, diagnosis const& health, double factor, std::string const& goal) {
-  auto const none = [](std::string why) { return sample_advice{false, 0, "How many more samples it takes cannot be said: " + std::move(why)}; };
+  auto const none = [](std::string why) {
+    return sample_advice{false, 0, "How many more samples it takes cannot be said: " + std::move(why)};
+  };
   if (e.groups() > 0.0) return none("the error bar comes from few groups.");
-  if (e.verdict() == verdict::broken) return none("the error bar itself is broken; draw several times as many and look again.");
+  if (e.verdict() == verdict::broken)
+    return none("the error bar itself is broken; draw several times as many and look again.");
   if (!health.settles())
     return none(health.tail_known()
-                    ? "the largest weights have tail index " + rounded_to_error(health.tail_index(), health.tail_index_error()) +
+                    ? "the largest weights have tail index " +
+                          rounded_to_error(health.tail_index(), health.tail_index_error()) +
                           ", and their variance is infinite from 0.5 on; no bound on the likelihood is declared."
                     : "too few weights differ to tell their tail, and no bound on the likelihood is declared.");
   double const more = std::ceil(static_cast<double>(health.drawn()) * (factor - 1.0));
@@ -40,7 +45,8 @@ inline sample_advice advice_for(estimate const& e, diagnosis const& health, doub
   double unit = 1.0;
   while (more / unit >= 100.0) unit *= 10.0;
   auto const about = static_cast<std::uint64_t>(std::floor(more / unit + 0.5) * unit);
-  return {true, static_cast<std::uint64_t>(more), "About " + std::to_string(about) + " more samples are needed for " + goal + "."};
+  return {true, static_cast<std::uint64_t>(more),
+          "About " + std::to_string(about) + " more samples are needed for " + goal + "."};
 }
 
 }  // namespace detail
@@ -50,7 +56,8 @@ inline sample_advice advice_for(estimate const& e, diagnosis const& health, doub
 /// @throws bad_argument unless the target is a positive finite number.
 inline sample_advice more_samples(estimate const& e, diagnosis const& health, double target) {
   if (!detail::is_finite(target) || !(target > 0.0))
-    throw bad_argument("more_samples: the target " + detail::plain_number(target) + " must be a positive finite number");
+    throw bad_argument("more_samples: the target " + detail::plain_number(target) +
+                       " must be a positive finite number");
   double const times = e.standard_error / target;
   return detail::advice_for(e, health, times * times, "a standard error of " + detail::short_number(target));
 }

@@ -71,7 +71,10 @@ class cumulative_estimator : public detail::column_estimator<Readout> {
   explicit cumulative_estimator(Readout its_readout) : detail::column_estimator<Readout>(std::move(its_readout)) {}
 
   [[nodiscard]] cumulative_estimator fresh() const { return cumulative_estimator(this->readout()); }
-  [[nodiscard]] cumulative_result answer(run_facts const& facts) const { return cumulative_result(this->column(facts)); }
+  [[nodiscard]] cumulative_result answer(run_facts const& facts) const { return answer_from(this->view(), facts); }
+  [[nodiscard]] cumulative_result answer_from(weighted_view const& all, run_facts const& facts) const {
+    return cumulative_result(this->column(all, facts));
+  }
 };
 
 /// F at chosen points, each a probability.

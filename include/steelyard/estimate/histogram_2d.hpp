@@ -81,7 +81,9 @@ class histogram_2d_estimator {
   }
 
   [[nodiscard]] histogram_2d_result answer(run_facts const& facts) const {
-    auto const edges = [](std::optional<bins> const& chosen) { return chosen ? *chosen : detail::choose_bins({}, 2.0); };
+    auto const edges = [](std::optional<bins> const& chosen) {
+      return chosen ? *chosen : detail::choose_bins({}, 2.0);
+    };
     return {edges(x_), edges(y_), cells_, groups_, facts};
   }
 
@@ -112,8 +114,9 @@ inline constexpr bool are_edges_v = std::is_convertible_v<Edges, bins> || std::i
 template <class First, class Second, class X = automatic_bins_t, class Y = automatic_bins_t>
 [[nodiscard]] auto histogram_2d(First first, Second second, X x = {}, Y y = {}) {
   constexpr bool fine = detail::are_edges_v<X> && detail::are_edges_v<Y>;
-  static_assert(fine, "steelyard: histogram_2d() takes bins for each readout: equal_bins(lower, upper, n), log_bins, "
-                      "bins{edges} or automatic_bins");
+  static_assert(fine,
+                "steelyard: histogram_2d() takes bins for each readout: equal_bins(lower, upper, n), log_bins, "
+                "bins{edges} or automatic_bins");
   if constexpr (fine)
     return histogram_2d_estimator<First, Second>(std::move(first), std::move(second), detail::given_edges(std::move(x)),
                                                  detail::given_edges(std::move(y)));

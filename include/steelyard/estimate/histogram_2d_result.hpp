@@ -23,7 +23,8 @@ namespace steelyard::inline v1 {
 class histogram_2d_result {
  public:
   /// @param cells  powers of the weights by cell, x-bin (y-bins + 3) + y-bin, see `bins::cell`
-  histogram_2d_result(bins x, bins y, detail::group_sums<3> const& cells, detail::grouped_cells groups, run_facts const& facts)
+  histogram_2d_result(bins x, bins y, detail::group_sums<3> const& cells, detail::grouped_cells groups,
+                      run_facts const& facts)
       : x_(std::move(x)), y_(std::move(y)), groups_(std::move(groups)), facts_(facts) {
     std::size_t const n = cells.size();
     for (std::size_t k = 0; k < n; ++k) {
@@ -51,8 +52,8 @@ class histogram_2d_result {
   /// Probability of cell (i, j), as a share of the whole sample. @throws bad_argument past the end.
   estimate probability(std::size_t i, std::size_t j) const {
     if (i >= x_size() || j >= y_size())
-      throw bad_argument("histogram_2d: there is no cell (" + std::to_string(i) + ", " + std::to_string(j) + ") among " +
-                         std::to_string(x_size()) + " by " + std::to_string(y_size()));
+      throw bad_argument("histogram_2d: there is no cell (" + std::to_string(i) + ", " + std::to_string(j) +
+                         ") among " + std::to_string(x_size()) + " by " + std::to_string(y_size()));
     auto const wanted = static_cast<std::uint32_t>(i * (y_size() + 3) + j);
     auto const found = std::lower_bound(labels_.begin(), labels_.end(), wanted);
     if (found == labels_.end() || *found != wanted) return estimate::one_sided(false, facts_);
@@ -85,7 +86,8 @@ class histogram_2d_result {
   }
 
  private:
-  [[nodiscard]] estimate share(detail::cell_sums const& in, detail::cell_sums const& out, error_terms const& terms) const {
+  [[nodiscard]] estimate share(detail::cell_sums const& in, detail::cell_sums const& out,
+                               error_terms const& terms) const {
     return detail::share_estimate(in.weight, out.weight, terms, in.weight > 0.0, out.weight > 0.0, facts_);
   }
   template <class Where>
@@ -93,8 +95,9 @@ class histogram_2d_result {
     auto const chosen = [&](std::uint32_t label) { return where(label / (y_size() + 3), label % (y_size() + 3)); };
     detail::cell_sums in, out;
     for (std::size_t k = 0; k < labels_.size(); ++k) (chosen(labels_[k]) ? in : out) += sums_[k];
-    return share(in, out, terms_.empty() ? detail::share_terms(in, out)
-                                         : groups_.terms(chosen, [](std::uint32_t) { return true; }));
+    return share(in, out, terms_.empty() ? detail::share_terms(in, out) : groups_.terms(chosen, [](std::uint32_t) {
+      return true;
+    }));
   }
   /// Terms of every cell from groups, in one walk: with p the cell's share and W_g the group's,
   ///   sum u^2 = sum over groups in the cell of (w - p W_g)^2, plus p^2 times the sum of W_g^2 over the others
@@ -109,7 +112,8 @@ class histogram_2d_result {
       for (auto const& [cell, w] : of_group) whole += w / total;
       double const square = whole * whole;
       for (auto const& [cell, w] : of_group) {
-        auto const k = static_cast<std::size_t>(std::lower_bound(labels_.begin(), labels_.end(), cell) - labels_.begin());
+        auto const k =
+            static_cast<std::size_t>(std::lower_bound(labels_.begin(), labels_.end(), cell) - labels_.begin());
         double const u = w / total - sums_[k].weight / total * whole;
         terms_[k].sum_squares += u * u;
         terms_[k].sum_fourth += (u * u) * (u * u);
@@ -152,8 +156,8 @@ class histogram_2d_result {
     for (std::size_t j = 0; j < h.y_size(); ++j) {
       estimate const p = h.probability(i, j);
       if (p.never_seen()) continue;
-      text += "from " + detail::short_number(h.x_edge(i)) + " to " + detail::short_number(h.x_edge(i + 1)) + " and from " +
-              detail::short_number(h.y_edge(j)) + " to " + detail::short_number(h.y_edge(j + 1)) + ": " +
+      text += "from " + detail::short_number(h.x_edge(i)) + " to " + detail::short_number(h.x_edge(i + 1)) +
+              " and from " + detail::short_number(h.y_edge(j)) + " to " + detail::short_number(h.y_edge(j + 1)) + ": " +
               detail::rounded_to_error(p.value, p.standard_error) + "\n";
     }
   return text + "outside: " + detail::short_number(h.outside().value);

@@ -18,7 +18,9 @@ class mode_estimator : public histogram_estimator<Readout> {
     histogram_estimator<Readout>::operator+=(other);
     return *this;
   }
-  [[nodiscard]] mode_result answer(run_facts const& facts) const { return histogram_estimator<Readout>::answer(facts).mode(); }
+  [[nodiscard]] mode_result answer(run_facts const& facts) const {
+    return histogram_estimator<Readout>::answer(facts).mode();
+  }
 };
 
 /// Mode of a scalar readout over given bins, or over automatic ones.

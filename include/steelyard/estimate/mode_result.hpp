@@ -21,7 +21,8 @@ namespace steelyard::inline v1 {
 /// Bins narrower than the sample can fill make any bin the highest: `rivals` says so.
 class mode_result {
  public:
-  mode_result(bins edges, std::vector<detail::cell_sums> cells, detail::grouped_cells const& groups, run_facts const& facts)
+  mode_result(bins edges, std::vector<detail::cell_sums> cells, detail::grouped_cells const& groups,
+              run_facts const& facts)
       : edges_(std::move(edges)) {
     std::size_t const n = edges_.size();
     cells.resize(n + 3);
@@ -32,13 +33,14 @@ class mode_result {
     for (std::size_t b = 0; b < cells.size(); ++b)
       if (b != bin_) rest += cells[b];
     bool const grouped = facts.groups > 0.0;
-    error_terms const of_bin = grouped ? groups.terms([this](std::uint32_t cell) { return cell == bin_; },
-                                                      [](std::uint32_t) { return true; })
-                                       : detail::share_terms(cells[bin_], rest);
+    error_terms const of_bin =
+        grouped ? groups.terms([this](std::uint32_t cell) { return cell == bin_; }, [](std::uint32_t) { return true; })
+                : detail::share_terms(cells[bin_], rest);
     density_ = detail::share_estimate(cells[bin_].weight, rest.weight, of_bin, cells[bin_].weight > 0.0,
                                       rest.weight > 0.0, facts)
                    .scaled(1.0 / edges_.width(bin_));
-    double const total = cells[bin_].weight + rest.weight, scale = total > 0.0 ? 1.0 / total : 0.0, square = scale * scale;
+    double const total = cells[bin_].weight + rest.weight, scale = total > 0.0 ? 1.0 / total : 0.0,
+                 square = scale * scale;
     for (std::size_t b = 0; b < n; ++b) {
       if (b == bin_) continue;
       double const a = 1.0 / edges_.width(bin_), c = 1.0 / edges_.width(b), lead = (height(bin_) - height(b)) * scale;

@@ -116,7 +116,8 @@ class moment_sums {
       power_sums& right_set = right.sets_[k];
       for (std::size_t v = 0; v < Vars; ++v) {
         double const gap = right_set.centre[v] - left_set.centre[v];
-        double const centre = total > 0.0 ? left_set.centre[v] + gap * (right_set.first[0] / total) : left_set.centre[v];
+        double const centre =
+            total > 0.0 ? left_set.centre[v] + gap * (right_set.first[0] / total) : left_set.centre[v];
         double const scale = std::max(std::max(left_set.scale[v], right_set.scale[v]), power_above(std::abs(gap)));
         move_to(k, v, centre, scale);
         right.move_to(k, v, centre, scale);

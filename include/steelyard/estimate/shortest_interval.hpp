@@ -37,7 +37,8 @@ struct doubtful : estimate {
 /// Ends of the shortest run of sorted values that has the wanted share of the
 /// weight; of equally short ones the heaviest, then the lowest. Weights are added as whole numbers, so that
 /// taking one away again leaves no rounding behind.
-inline std::pair<double, double> shortest_run(std::span<double const> values, std::span<double const> weights, double level) {
+inline std::pair<double, double> shortest_run(std::span<double const> values, std::span<double const> weights,
+                                              double level) {
   double total = 0.0;
   for (double const w : weights) total += w;
   std::vector<double> distinct;
@@ -77,13 +78,14 @@ inline std::pair<double, double> shortest_run(std::span<double const> values, st
 
 /// Shortest coverage interval of a scalar readout on a kept sample.
 ///   errors from the intervals of G = 16 parts of the sample, or as many as it has groups: the parts' mean square
-///   distance from the whole times G^(-2/3) for the ends, 1/G for the width             [Politis & Romano, Ann. Stat. 22, 1994]
+///   distance from the whole times G^(-2/3) for the ends, 1/G for the width   [Politis & Romano, Ann. Stat. 22, 1994]
 /// Memory: 32 bytes an entry of positive weight. Cost  one sort and two walks.
 template <class Readout>
 class shortest_interval_estimator : public detail::column_estimator<Readout> {
  public:
   shortest_interval_estimator(Readout its_readout, double level)
-      : detail::column_estimator<Readout>(std::move(its_readout)), level_(detail::checked_level("shortest_interval", level)) {}
+      : detail::column_estimator<Readout>(std::move(its_readout)),
+        level_(detail::checked_level("shortest_interval", level)) {}
 
   [[nodiscard]] shortest_interval_estimator fresh() const { return {this->readout(), level_}; }
 
@@ -92,8 +94,10 @@ class shortest_interval_estimator : public detail::column_estimator<Readout> {
     std::size_t const n = all.weights.size();
     std::vector<std::size_t> order(n);
     for (std::size_t i = 0; i < n; ++i) order[i] = i;
-    std::stable_sort(order.begin(), order.end(), [&](std::size_t a, std::size_t b) { return all.values[a] < all.values[b]; });
-    std::size_t const parts = facts.groups > 0.0 ? std::min(most_parts, static_cast<std::size_t>(facts.groups)) : most_parts;
+    std::stable_sort(order.begin(), order.end(),
+                     [&](std::size_t a, std::size_t b) { return all.values[a] < all.values[b]; });
+    std::size_t const parts =
+        facts.groups > 0.0 ? std::min(most_parts, static_cast<std::size_t>(facts.groups)) : most_parts;
     std::vector<double> values[most_parts + 1], weights[most_parts + 1];  // the last is the whole
     std::vector<std::uint64_t> before(all.counts.empty() ? 0 : n, 0);     // copies of earlier entries
     for (std::size_t i = 1; i < before.size(); ++i) before[i] = before[i - 1] + all.counts[i - 1];
@@ -108,7 +112,8 @@ class shortest_interval_estimator : public detail::column_estimator<Readout> {
         continue;
       }
       for (std::size_t part = 0; part < parts; ++part)
-        if (double const times = copies_in(part, before[i] + all.counts[i], parts) - copies_in(part, before[i], parts); times > 0.0)
+        if (double const times = copies_in(part, before[i] + all.counts[i], parts) - copies_in(part, before[i], parts);
+            times > 0.0)
           put(part, i, times);
     }
     auto const [lower, upper] = detail::shortest_run(values[most_parts], weights[most_parts], level_);

@@ -24,7 +24,7 @@ struct pareto_tail {
   double shape = 0.0;
   double scale = 0.0;
   double standard_error = 0.0;  ///< of the shape, about: that of the maximum likelihood fit, (1 + shape)/sqrt n
-  bool known = false;  ///< false where there is too little to fit, or a quarter of it lies on the threshold
+  bool known = false;           ///< false where there is too little to fit, or a quarter of it lies on the threshold
 };
 
 /// Fits a generalised Pareto law to excesses over a threshold, in rising order.

@@ -34,8 +34,9 @@ class picker {
   X const& operator()(draws& source) const {
     X const* const states = sample_.store()->data();
     if (states == nullptr)
-      throw not_kept("picker: this sample kept its streams only; use sample.with_state(pick.index(draws), f), or run with "
-                     "keeping::states");
+      throw not_kept(
+          "picker: this sample kept its streams only; use sample.with_state(pick.index(draws), f), or run with "
+          "keeping::states");
     return states[index(source)];
   }
 

@@ -223,7 +223,8 @@ class weighted_sample {
       return {};
   }
 
-  /// k states, drawn in proportion to their weights. @throws bad_argument for k = 0.
+  /// k states, drawn in proportion to their weights; without replacement no more than have any.
+  /// @throws bad_argument for k = 0.
   ensemble<X> resample(count k, resample_options const& options = {}) const {
     return detail::resampled<X>(*this, k, options);
   }

@@ -1,0 +1,65 @@
+// SPDX-License-Identifier: BSL-1.0
+// The cells of many values at once are those of each value on its own.
+
+#include <doctest/doctest.h>
+
+#include <cmath>
+#include <cstdint>
+#include <limits>
+#include <vector>
+
+#include <steelyard/core.hpp>
+
+namespace sy = steelyard;
+namespace detail = steelyard::detail;
+
+namespace {
+
+std::vector<double> values_around(sy::bins const& edges) {
+  double const inf = std::numeric_limits<double>::infinity(), lower = edges.edge(0), upper = edges.edge(edges.size());
+  std::vector<double> all{0.0, -0.0, 1e300, -1e300, std::numeric_limits<double>::max(), 1e-320};
+#if !defined(__FAST_MATH__)
+  all.insert(all.end(), {inf, -inf, std::numeric_limits<double>::quiet_NaN()});
+#else
+  static_cast<void>(inf);
+#endif
+  for (std::size_t b = 0; b <= edges.size(); ++b) {
+    double const e = edges.edge(b);
+    all.insert(all.end(), {e, std::nextafter(e, lower - 1.0), std::nextafter(e, upper + 1.0)});
+  }
+  sy::draws source(3);
+  for (int i = 0; i < 2'000; ++i) all.push_back(source.uniform(lower - 0.2 * (upper - lower), upper + 0.2 * (upper - lower)));
+  return all;
+}
+
+}  // namespace
+
+TEST_CASE("bins: many values at once fall where each falls alone, for even, far-off, narrow and uneven bins") {
+  for (sy::bins const& edges :
+       {sy::equal_bins(0.0, 1.0, 100), sy::equal_bins(-3.7, 0.1, 7), sy::equal_bins(0.0, 1.0, 1), sy::equal_bins(1e9, 1e9 + 1.0, 1000),
+        sy::equal_bins(1e15, 1e15 + 8.0, 64), sy::equal_bins(-1e300, 1e300, 10), sy::equal_bins(0.0, 1e-310, 5),
+        sy::equal_bins(0.0, 1.0, 200'000), sy::log_bins(1e-3, 1e3, 12), sy::bins({-1.0, 0.5, 0.75, 10.0})}) {
+    CAPTURE(edges.edge(0));
+    CAPTURE(edges.size());
+    std::vector<double> const values = values_around(edges);
+    std::vector<std::uint64_t> cells(values.size());
+    edges.cells(values, cells.data());
+    std::size_t differ = 0;
+    for (std::size_t i = 0; i < values.size(); ++i)
+      if (cells[i] != edges.cell(values[i])) ++differ;
+    CHECK(differ == 0);
+  }
+}
+
+TEST_CASE("bins: every vector width finds the same places") {
+  sy::bins const edges = sy::equal_bins(-2.0, 3.0, 50);
+  std::vector<double> const values = values_around(edges);
+  detail::even_bins const even{-2.0, 10.0, 50.0, 1e-12};
+  std::vector<std::uint64_t> plain(values.size()), same(values.size());
+  detail::place_all(values, even, plain.data(), detail::isa::plain);
+  for (detail::isa const width : {detail::isa::sse2, detail::isa::avx2, detail::isa::avx512}) {
+    if (width > detail::widest_isa()) continue;
+    detail::place_all(values, even, same.data(), width);
+    CHECK(plain == same);
+  }
+}
