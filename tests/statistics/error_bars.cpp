@@ -61,7 +61,9 @@ TEST_CASE("mean z^2 of quantiles is near 1, but for the few states that a standa
     std::size_t size;
   } const asked_of[] = {{"uniform, no reading", 10'000}, {"wide normal", 2'000}, {"prior weights", 2'000}};
   constexpr std::array orders{0.5, 0.75, 0.9};
-  for (auto const& [name, size] : asked_of) {
+  for (auto const& each : asked_of) {
+    char const* const name = each.name;
+    std::size_t const size = each.size;
     problem const& p = of(name);
     for (double const order : orders) {
       double const exact = p.exact.quantile(order);

@@ -13,8 +13,8 @@
 
 #include "statistics/cells.hpp"
 
-// Error bars of the toolbox from both sides: over 4000 seeds the mean of z^2, z = (answer - exact) / standard error, is 1
-// within 0.1, or what Student's t makes of it; and intervals cover what they claim where the runs say `sound`.
+// Error bars of the toolbox from both sides: over 4000 seeds the mean of z^2, z = (answer - exact) / standard error, is
+// 1 within 0.1, or what Student's t makes of it; and intervals cover what they claim where the runs say `sound`.
 
 namespace {
 
@@ -29,24 +29,21 @@ double y_of(state const& s) { return 0.6 * s.x + 0.8 * s.e; }
 
 /// Answers to the toolbox questions on one sample, with the truth beside each.
 template <class Sample>
-std::vector<asked> ask(Sample const& sample, double mean, double sd, double skewness, double kurtosis, double r, double below,
-                       double cell_probability, double shortest) {
+std::vector<asked> ask(Sample const& sample, double mean, double sd, double skewness, double kurtosis, double r,
+                       double below, double cell_probability, double shortest) {
   auto const [m, c, f, h, k] = sample.estimate(
-      sy::moments(x_of), sy::covariance([](state const& s) { return std::array{s.x, y_of(s)}; }),
+      sy::moments(x_of), sy::covariance([](state const& s) {
+        return std::array{s.x, y_of(s)};
+      }),
       sy::cumulative(x_of, {mean}), sy::histogram_2d(x_of, e_of, sy::bins({mean, mean + sd}), sy::bins({0.0, 9.0})),
       sy::shortest_interval(x_of, 0.8));
-  return {{m.mean, mean},
-          {m.sd, sd},
-          {m.skewness, skewness},
-          {m.kurtosis, kurtosis},
-          {c(0, 0), sd * sd},
-          {c(1, 0), 0.6 * sd * sd},
-          {c.correlation(0, 1), r},
-          {f.shares[0], below},
-          {h.probability(0, 0), cell_probability},
+  return {{m.mean, mean},           {m.sd, sd},           {m.skewness, skewness},
+          {m.kurtosis, kurtosis},   {c(0, 0), sd * sd},   {c(1, 0), 0.6 * sd * sd},
+          {c.correlation(0, 1), r}, {f.shares[0], below}, {h.probability(0, 0), cell_probability},
           {k.width, shortest}};
 }
-char const* const names[] = {"mean", "sd", "skewness", "kurtosis", "variance", "covariance", "correlation", "F", "cell", "shortest width"};
+char const* const names[] = {"mean",       "sd",          "skewness", "kurtosis", "variance",
+                             "covariance", "correlation", "F",        "cell",     "shortest width"};
 
 double phi(double x) { return 0.5 * std::erfc(-x / std::sqrt(2.0)); }
 
@@ -83,7 +80,8 @@ std::vector<asked> ask_gamma(std::uint64_t seed, std::uint64_t size) {
     (below(a) < 0.2 && density(a) < density(other_end(a)) ? low : high) = a;
   }
   return ask(pipe.run({.size = size, .seed = seed}), mean, sd, 2.0 / std::sqrt(3.0), 5.0,
-             0.6 * sd / std::sqrt(0.36 * 0.75 + 0.64), below(mean), (below(mean + sd) - below(mean)) * 0.5, other_end(low) - low);
+             0.6 * sd / std::sqrt(0.36 * 0.75 + 0.64), below(mean), (below(mean + sd) - below(mean)) * 0.5,
+             other_end(low) - low);
 }
 
 /// The same questions of ensembles drawn from that posterior.
@@ -98,15 +96,16 @@ std::vector<asked> ask_ensemble(std::uint64_t seed, sy::scheme how) {
       ensemble.estimate(sy::expectation(x_of), sy::moments(x_of), sy::correlation(x_of, y_of),
                         sy::probability([](state const& s) { return s.x > 1.0; }), sy::quantile(x_of, 0.5));
   double const sd = std::sqrt(0.5);
-  return {{mean, 0.5}, {m.sd, sd}, {r, 0.6 * sd / std::sqrt(0.36 * 0.5 + 0.64)}, {p, phi(-0.5 / sd)}, {q, 0.5},
-          {ensemble.expectation(x_of), 0.5}};
+  return {{mean, 0.5},         {m.sd, sd}, {r, 0.6 * sd / std::sqrt(0.36 * 0.5 + 0.64)},
+          {p, phi(-0.5 / sd)}, {q, 0.5},   {ensemble.expectation(x_of), 0.5}};
 }
 char const* const ensemble_names[] = {"mean", "sd", "correlation", "probability", "median", "mean, scheme known"};
 
 double by_student(double degrees) { return degrees / (degrees - 2.0); }
 
 /// Both promises of a cell that says `sound`, with a line for each cell.
-void check_cell(std::string const& problem, std::size_t size, std::string const& name, cell const& c, double z2, double within) {
+void check_cell(std::string const& problem, std::size_t size, std::string const& name, cell const& c, double z2,
+                double within) {
   std::string note = c.promises() ? "sound" : "";
   for (std::size_t l = 0; l < levels.size(); ++l)
     if (int const v = c.verdict_on(l); v != 0) note += v < 0 ? " low" : " high";
@@ -127,7 +126,8 @@ TEST_CASE("toolbox: standard errors are right from both sides, and intervals cov
       auto const cells =
           ask_often(4000, [&](std::uint64_t seed) { return normal ? ask_normal(seed, size) : ask_gamma(seed, size); });
       for (std::size_t q = 0; q < cells.size(); ++q) {
-        bool const width = std::string(names[q]) == "shortest width";  // from 16 parts, and its error counts a small bias in
+        bool const width =
+            std::string(names[q]) == "shortest width";  // from 16 parts, and its error counts a small bias in
         check_cell(normal ? "normal" : "gamma", size, names[q], cells[q], width ? by_student(15.0) : 1.0, 0.1);
       }
       CHECK(cells[0].promises());
@@ -149,7 +149,8 @@ TEST_CASE("toolbox: an ensemble's error bars hold the parent's error and the dra
                         draw{"priority", sy::scheme::priority}, draw{"successive", sy::scheme::successive}}) {
     auto const cells = ask_often(honest() ? 4000 : 2000, [&](std::uint64_t seed) { return ask_ensemble(seed, d.how); });
     for (std::size_t q = 0; q < cells.size(); ++q) {
-      bool const median = std::string(ensemble_names[q]) == "median";  // its standard error is half a width of its limits
+      bool const median =
+          std::string(ensemble_names[q]) == "median";  // its standard error is half a width of its limits
       check_cell(d.name, 1000, ensemble_names[q], cells[q], 1.0, median || !honest() ? 0.16 : 0.1);
       if (q != 1 && q != 2) CHECK(cells[q].promises());
     }
@@ -165,7 +166,8 @@ TEST_CASE("toolbox: the bins that may be the highest hold the one that is") {
     if (size > 3000 && !honest()) continue;
     std::uint64_t held = 0, alone = 0, right = 0;
     for (std::uint64_t seed = 1; seed <= repeats; ++seed) {
-      auto const m = pipe.mode({.size = size, .seed = seed}, [](double x) { return x; }, sy::equal_bins(-2.1, 2.9, 10));
+      auto const m = pipe.mode(
+          {.size = size, .seed = seed}, [](double x) { return x; }, sy::equal_bins(-2.1, 2.9, 10));
       sy::interval const limits = m.error_interval(0.95);
       held += limits.lower < 0.45 && limits.upper > 0.85 ? 1u : 0u;
       alone += m.rivals(0.95).empty() ? 1u : 0u;
@@ -173,7 +175,8 @@ TEST_CASE("toolbox: the bins that may be the highest hold the one that is") {
     }
     std::printf("mode of %llu: held %.4f, alone %.4f, right %.4f\n", static_cast<unsigned long long>(size),
                 static_cast<double>(held) / static_cast<double>(repeats),
-                static_cast<double>(alone) / static_cast<double>(repeats), static_cast<double>(right) / static_cast<double>(repeats));
+                static_cast<double>(alone) / static_cast<double>(repeats),
+                static_cast<double>(right) / static_cast<double>(repeats));
     CHECK(held >= hit_limits(repeats, 0.95, 1.0).least);
     if (size == 30'000) CHECK(alone > repeats * 9 / 10);
     if (size == 300) CHECK(right < repeats);

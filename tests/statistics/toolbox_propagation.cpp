@@ -10,9 +10,9 @@
 
 #include <steelyard/core.hpp>
 
-// Shortest coverage intervals and moments of plain propagation, JCGM 101:2008 (GUM Supplement 1), clause 9: with no reading
-// every weight is equal. Exact values by quadrature and closed forms; published ones beside them, rounded as printed.
-// Widths are held tightly; ends settle as n^(-1/3) and are held by their own, larger errors.
+// Shortest coverage intervals and moments of plain propagation, JCGM 101:2008 (GUM Supplement 1), clause 9: with no
+// reading every weight is equal. Exact values by quadrature and closed forms; published ones beside them, rounded as
+// printed. Widths are held tightly; ends settle as n^(-1/3) and are held by their own, larger errors.
 
 namespace sy = steelyard;
 
@@ -22,7 +22,7 @@ struct published {
   std::string clause;
   std::function<double(sy::draws&)> model;
   double mean, sd;
-  double lower, upper;          ///< exact shortest 95 % interval
+  double lower, upper;  ///< exact shortest 95 % interval
   double printed_lower, printed_upper, rounding;
 };
 
@@ -47,10 +47,12 @@ std::vector<published> const cases{
        return rectangular(d, h) + rectangular(d, h) + rectangular(d, h) + rectangular(d, 10.0 * h);
      },
      0.0, std::sqrt(103.0), -17.015814099869594, 17.015814099869594, -17.0, 17.0, 0.05},
-    // comparison loss, units 1e-6; printed values from memory, themselves from a million draws: ends loose by some 6 units
+    // comparison loss, units 1e-6; printed values from memory, themselves from a million draws: ends loose by some 6
+    // units
     {"9.4 x1 = 0", [](sy::draws& d) { return loss(d, 0.0); }, 50.0, 50.0, 0.0, 149.78661367769953, 0.0, 150.0, 0.5},
     {"9.4 x1 = 0.010", [](sy::draws& d) { return loss(d, 0.010); }, 150.0, 111.8034, 0.0, 366.0053, 0.0, 367.0, 1.0},
-    {"9.4 x1 = 0.050", [](sy::draws& d) { return loss(d, 0.050); }, 2550.0, 502.4938, 1593.5697, 3548.5698, 1591.0, 3543.0, 6.0},
+    {"9.4 x1 = 0.050", [](sy::draws& d) { return loss(d, 0.050); }, 2550.0, 502.4938, 1593.5697, 3548.5698, 1591.0,
+     3543.0, 6.0},
     {"ln x, x rectangular (0.1, 1.1)", [](sy::draws& d) { return std::log(d.uniform(0.1, 1.1)); }, -0.664900292916,
      0.606226697429, -1.89711998489, 0.0953101798043, -1.8971, 0.0953, 1e-4},
 };
