@@ -48,8 +48,8 @@ sy::histogram_result ours(std::size_t n) {
   return sums.answer(facts);
 }
 
-#if __has_include(<boost/histogram.hpp>)
 void boost_histogram(benchmark::State& state) {
+#if __has_include(<boost/histogram.hpp>)
   namespace bh = boost::histogram;
   std::size_t const n = all().values.size();
   bench::compare(state, 2.0, bench::side{n, [&] { benchmark::DoNotOptimize(ours(n).probability(50).standard_error); }},
@@ -58,9 +58,11 @@ void boost_histogram(benchmark::State& state) {
                    h.fill(all().values, bh::weight(all().weights));
                    benchmark::DoNotOptimize(h.at(50).variance());
                  }});
+#else
+  bench::left_out(state, "Boost.Histogram was not found");
+#endif
 }
 BENCH_ROW(boost_histogram, "histogram of 100 even bins | Boost.Histogram, weighted storage", 15);
-#endif
 
 /// xt::histogram finds bins by an argsort where it is given edges, and directly where it is given the two ends; it has no
 /// sums of squares, so no standard errors, either way.

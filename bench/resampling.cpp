@@ -97,8 +97,8 @@ void multinomial_standard(benchmark::State& state) {
 }
 BENCH_ROW(multinomial_standard, "multinomial, 1e6 of 1e6 | std::discrete_distribution", 8);
 
-#if defined(STEELYARD_BENCH_GSL)
 void multinomial_gsl(benchmark::State& state) {
+#if defined(STEELYARD_BENCH_GSL)
   std::vector<double> const weights = weights_of(bench::samples(1'000'000));
   std::size_t const n = weights.size();
   std::vector<std::size_t> ours(n), positions(n);
@@ -116,8 +116,10 @@ void multinomial_gsl(benchmark::State& state) {
                    keep(positions);
                  }});
   gsl_rng_free(engine);
+#else
+  bench::left_out(state, "the GNU Scientific Library was not found");
+#endif
 }
 BENCH_ROW(multinomial_gsl, "multinomial, 1e6 of 1e6 | gsl_ran_discrete", 20);
-#endif
 
 }  // namespace

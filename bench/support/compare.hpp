@@ -5,6 +5,7 @@
 #include <cstddef>
 #include <cstdlib>
 #include <ctime>
+#include <string>
 
 #include <benchmark/benchmark.h>
 
@@ -72,7 +73,13 @@ void measure(benchmark::State& state, side<Ours> ours) {
   state.counters["ours_ns"] = 1e9 * best;
 }
 
+/// A row that cannot be had here, and why.
+inline void left_out(benchmark::State& state, char const* reason) {
+  for (auto _ : state) state.SetIterationTime(1e-9);
+  state.SetLabel(std::string("left out: ") + reason);
+}
+
 }  // namespace bench
 
-/// A row that runs both sides so many times; fewer where the tests ask.
+/// A row that runs both sides so many times.
 #define BENCH_ROW(FUNCTION, NAME, TIMES) BENCHMARK(FUNCTION)->Name(NAME)->UseManualTime()->Iterations(TIMES)->Unit(benchmark::kMillisecond)

@@ -1,7 +1,9 @@
 // SPDX-License-Identifier: BSL-1.0
 #include <doctest/doctest.h>
 
+#include <steelyard/base/bin_lanes.hpp>
 #include <steelyard/base/kernels.hpp>
+#include <steelyard/base/moment_lanes.hpp>
 
 #include <boost/multiprecision/cpp_bin_float.hpp>
 
@@ -9,6 +11,7 @@
 #include <bit>
 #include <cmath>
 #include <cstdint>
+#include <cstring>
 #include <limits>
 #include <span>
 #include <vector>
@@ -217,6 +220,151 @@ TEST_CASE("the largest of a block at every width, place and length") {
     CHECK(same_bits(sy::block_maximum(zeros, width), 0.0));
     zeros[1] = zeros[4] = -0.0;
     CHECK(same_bits(sy::block_maximum(zeros, width), 0.0));
+  }
+}
+
+namespace {
+
+template <sy::block_sums Which, std::size_t N>
+void same_sums_at_every_width(double centre, double idle_value, double idle_weight) {
+  for (std::size_t const size : {0u, 1u, 7u, 8u, 9u, 16u, 100u, 1023u, 1024u})
+    for (std::size_t const shift : {0u, 1u, 3u}) {
+      even u;
+      std::vector<double> values(size + shift), weights(size + shift);
+      for (double& each : values) each = u() < 0.3 ? 0.0 : 1e3 * (u() - 0.5);
+      for (double& each : weights) each = u() < 0.1 ? 0.0 : u();
+      auto const f = std::span<double const>(values).subspan(shift), w = std::span<double const>(weights).subspan(shift);
+      double plain[N];
+      sy::sum_block<Which>(f, w, centre, idle_value, idle_weight, plain, sy::isa::plain);
+      for (sy::isa const width : widths()) {
+        double sums[N];
+        sy::sum_block<Which>(f, w, centre, idle_value, idle_weight, sums, width);
+        CHECK_MESSAGE(same_bits(sums, plain), "kernel ", static_cast<int>(Which), ", width ", static_cast<int>(width), ", size ",
+                      size, ", shift ", shift);
+      }
+    }
+}
+
+}  // namespace
+
+TEST_CASE("sums for error bars have the same bits at every width, length and alignment") {
+  same_sums_at_every_width<sy::block_sums::first, 2>(12.5, 12.5, 0.0);
+  same_sums_at_every_width<sy::block_sums::powers, 8>(-3.25, -3.25, 0.0);
+  same_sums_at_every_width<sy::block_sums::parted, 6>(0.0, 0.0, 0.0);
+  same_sums_at_every_width<sy::block_sums::spread, 4>(0.4, 0.0, 0.4);
+}
+
+TEST_CASE("sums for error bars are the sums they are named after") {
+  std::vector<double> const f = {3.0, 0.0, -2.0, 5.0, 0.0, 1.0, 4.0, -1.0, 2.0, 7.0}, w = {1.0, 2.0, 4.0, 0.0, 8.0, 1.0, 2.0, 1.0, 4.0, 1.0};
+  for (sy::isa const width : widths()) {
+    double first[2], powers[8], parted[6], spread[4];
+    sy::sum_block<sy::block_sums::first>(f, w, 1.0, 1.0, 0.0, first, width);
+    sy::sum_block<sy::block_sums::powers>(f, w, 1.0, 1.0, 0.0, powers, width);
+    sy::sum_block<sy::block_sums::parted>(f, w, 0.0, 0.0, 0.0, parted, width);
+    sy::sum_block<sy::block_sums::spread>(f, w, 2.0, 0.0, 2.0, spread, width);
+    double first_want[2] = {}, powers_want[8] = {}, parted_want[6] = {}, spread_want[4] = {};
+    for (std::size_t i = 0; i < f.size(); ++i) {
+      double const d = f[i] - 1.0, e = w[i] - 2.0, w2 = w[i] * w[i];
+      first_want[0] += w[i];
+      first_want[1] += w[i] * d;
+      for (std::size_t k = 0; k < 3; ++k) powers_want[k] += w2 * std::pow(d, static_cast<double>(k));
+      for (std::size_t k = 0; k < 5; ++k) powers_want[3 + k] += w2 * w2 * std::pow(d, static_cast<double>(k));
+      double const own[3] = {w[i], w2, w2 * w2};
+      for (std::size_t k = 0; k < 3; ++k) parted_want[k + (f[i] == 0.0 ? 3 : 0)] += own[k];
+      for (std::size_t k = 0; k < 4; ++k) spread_want[k] += std::pow(e, static_cast<double>(k + 1));
+    }
+    CHECK(same_bits(first, first_want));  // whole numbers: exact in any order
+    CHECK(same_bits(powers, powers_want));
+    CHECK(same_bits(parted, parted_want));
+    CHECK(same_bits(spread, spread_want));
+  }
+}
+
+TEST_CASE("the total of values has the same bits at every width, and is right") {
+  for (std::size_t const size : {0u, 1u, 7u, 8u, 9u, 1023u, 1024u, 1025u, 4096u, 5001u}) {
+    even u;
+    std::vector<double> values(size + 1);
+    long double want = 0.0L;
+    for (double& each : values) each = 2.0 * u() - 0.7;
+    auto const some = std::span<double const>(values).subspan(1);
+    for (double const each : some) want += each;
+    double const plain = sy::total_of(some, sy::isa::plain);
+    for (sy::isa const width : widths()) CHECK(same_bits(sy::total_of(some, width), plain));
+    CHECK(std::abs(plain - static_cast<double>(want)) <= 1e-13 * static_cast<double>(size));
+  }
+}
+
+TEST_CASE("one value that is not finite is noticed at any place, at every width, whatever the compiler was told") {
+  std::uint64_t const odd[] = {0x7ff0000000000000u, 0xfff0000000000000u, 0x7ff8000000000000u, 0xfff0000000000001u};
+  for (sy::isa const width : widths())
+    for (std::size_t const size : {1u, 7u, 8u, 9u, 30u}) {
+      std::vector<double> values(size, std::numeric_limits<double>::max());
+      values.front() = lowest;
+      CHECK(sy::all_finite(values, width));
+      for (std::size_t k = 0; k < size; ++k)
+        for (std::uint64_t const bits : odd) {
+          double const kept = values[k];
+          std::memcpy(&values[k], &bits, sizeof bits);
+          CHECK_FALSE(sy::all_finite(values, width));
+          values[k] = kept;
+        }
+    }
+  CHECK(sy::all_finite({}));
+}
+
+TEST_CASE("places among even bins: the same at every width, right where they are given, and given nearly everywhere") {
+  struct frame {
+    double lower, upper;
+    std::size_t bins;
+  };
+  for (frame const& of : {frame{0.0, 1.0, 100}, frame{-3.0, 5.0, 7}, frame{1e6, 1e6 + 1.0, 50}, frame{-1e-9, 1e-9, 1}}) {
+    double const span = of.upper - of.lower, n = static_cast<double>(of.bins), per_width = n / span;
+    double const slack = 0x1p-50 * (std::max(std::abs(of.lower), std::abs(of.upper)) * per_width + n);
+    sy::even_bins const bins{of.lower, per_width, n, slack};
+    std::vector<double> values;
+    for (std::size_t b = 0; b <= of.bins; ++b) {
+      double x = of.lower + span * (static_cast<double>(b) / n);
+      for (int k = 0; k < 4; ++k) x = std::nextafter(x, lowest);
+      for (int k = 0; k < 9; ++k, x = std::nextafter(x, of.upper + span)) values.push_back(x);
+    }
+    even u;
+    std::size_t const plain_ones = 3000;
+    for (std::size_t k = 0; k < plain_ones; ++k) values.push_back(of.lower + span * (1.4 * u() - 0.2));
+    for (double const x : {lowest, -lowest, -0.0, 0.0}) values.push_back(x);
+    std::size_t const finite = values.size();
+    for (std::uint64_t const bits : {0x7ff0000000000000u, 0xfff0000000000000u, 0x7ff8000000000000u, 0xfff0000000000001u}) {
+      double x;
+      std::memcpy(&x, &bits, sizeof bits);
+      values.push_back(x);
+    }
+    std::vector<std::uint64_t> plain(values.size());
+    CHECK(sy::place_all(values, bins, plain.data(), sy::isa::plain));
+    for (sy::isa const width : widths())
+      for (std::size_t const shift : {0u, 1u, 5u}) {
+        std::vector<std::uint64_t> places(values.size() + 1, 77u);
+        auto const some = std::span<double const>(values).subspan(shift);
+        CHECK(sy::place_all(some, bins, places.data(), width));
+        CHECK(std::equal(plain.begin() + static_cast<std::ptrdiff_t>(shift), plain.end(), places.begin()));
+        CHECK(places[some.size()] == 77u);
+      }
+    std::size_t wrong = 0, left = 0;
+    for (std::size_t k = 0; k < values.size(); ++k) {
+      if (plain[k] == sy::unplaced) {
+        left += k < finite ? 1 : 0;
+        continue;
+      }
+      wrong += k < finite ? 0 : 1;
+      auto const edge = [&](std::size_t b) { return exact(of.lower) + (exact(of.upper) - exact(of.lower)) * b / of.bins; };
+      std::uint64_t const b = plain[k];
+      bool const right = b == of.bins       ? exact(values[k]) < edge(0)
+                         : b == of.bins + 1 ? exact(values[k]) > edge(of.bins)
+                                            : exact(values[k]) >= edge(b) && exact(values[k]) < edge(b + 1);
+      wrong += right ? 0 : 1;
+    }
+    CAPTURE(of.lower);
+    CHECK(wrong == 0);
+    CHECK(left <= 9 * (of.bins + 1) + 2);  // those beside the edges, and zero
+    CHECK_FALSE(sy::place_all(std::vector<double>{of.lower + 0.3 * span / n}, bins, plain.data()));
   }
 }
 

@@ -16,9 +16,10 @@
 namespace steelyard::inline v1::detail {
 
 /// Entries in rising order of their values, as far as anybody looks: they are parted by value into up to 256 buckets at
-/// once, and a bucket is sorted when it is first looked into. `Entry` has value, weight and count().
+/// once, and a bucket is sorted when it is first looked into. `Entry` has value, weight and copies(); where it says
+/// `keeps_order`, buckets are sorted apart, and `for_each` goes over all entries in an order that no look changes.
 ///   parted as in sample sort: splitters at even places of a sorted part of the values     [Frazer & McKellar, J. ACM 17, 1970]
-/// Looking is safe from several threads.
+/// Looking is safe from several threads, and what is seen does not depend on who looked where before.
 /// Cost  about 10 ns an entry, and the sort of the buckets that are looked into.
 template <class Entry>
 class column_buckets {
@@ -59,8 +60,8 @@ class column_buckets {
   [[nodiscard]] std::size_t size() const noexcept { return entries_.size(); }
   [[nodiscard]] cell_sums const& all() const noexcept { return before_.back(); }
   [[nodiscard]] Entry const& operator[](std::size_t i) const {
-    look_into(bucket_of(i));
-    return entries_[i];
+    std::size_t const b = bucket_of(i);
+    return look_into(b).entries[i - starts_[b]];
   }
 
   /// The first entry with which the running weight reaches `wanted`; the last one if none does.
@@ -69,15 +70,17 @@ class column_buckets {
                                          [&](cell_sums const& each) { return each.weight < wanted; });
     std::size_t b = static_cast<std::size_t>(at - before_.begin()) - 1;
     while (b > 0 && starts_[b] == starts_[b + 1]) --b;
-    std::vector<cell_sums> const& marks = look_into(b);
+    looked_into const& bucket = look_into(b);
+    std::vector<cell_sums> const& marks = bucket.marks;
+    Entry const* const entries = bucket.entries;
     auto const mark = std::partition_point(marks.begin() + 1, marks.end(),
                                            [&](cell_sums const& each) { return each.weight < wanted; });
     std::size_t const m = static_cast<std::size_t>(mark - marks.begin()) - 1;
     double sum = marks[m].weight;
-    std::size_t i = starts_[b] + m * stride;
-    for (; i + 1 < starts_[b + 1]; ++i)
-      if ((sum += entries_[i].copies() * entries_[i].weight) >= wanted) break;
-    return i;
+    std::size_t i = m * stride;
+    for (; i + 1 < starts_[b + 1] - starts_[b]; ++i)
+      if ((sum += entries[i].copies() * entries[i].weight) >= wanted) break;
+    return starts_[b] + i;
   }
   /// How many entries are at most, or are less than, the one at this place: equal ones share a bucket.
   [[nodiscard]] std::size_t up_to(std::size_t i) const { return bound(i, true); }
@@ -88,32 +91,41 @@ class column_buckets {
     if (n == size()) return all();
     std::size_t const b = bucket_of(n), from = n - starts_[b];
     if (from == 0) return before_[b];
-    cell_sums sums = look_into(b)[from / stride];
-    for (std::size_t i = starts_[b] + from / stride * stride; i < n; ++i) sums.add(entries_[i].copies(), entries_[i].weight);
+    looked_into const& bucket = look_into(b);
+    cell_sums sums = bucket.marks[from / stride];
+    for (std::size_t i = from / stride * stride; i < from; ++i) sums.add(bucket.entries[i].copies(), bucket.entries[i].weight);
     return sums;
   }
   [[nodiscard]] cell_sums rest(std::size_t n) const {
     if (n == size()) return {};
     std::size_t const b = bucket_of(n);
     if (n == starts_[b]) return after_[b];
-    look_into(b);
+    Entry const* const entries = look_into(b).entries;
     cell_sums sums;
-    for (std::size_t i = n; i < starts_[b + 1]; ++i) sums.add(entries_[i].copies(), entries_[i].weight);
+    for (std::size_t i = n - starts_[b]; i < starts_[b + 1] - starts_[b]; ++i) sums.add(entries[i].copies(), entries[i].weight);
     return sums += after_[b + 1];
   }
-  /// act(entry, whether it is among the first n), in no order.
+  /// act(entry, whether it is among the first n), in an order that depends on n alone.
   template <class Act>
   void for_each(std::size_t n, Act act) const {
-    if (n < size()) look_into(bucket_of(n));
-    for (std::size_t i = 0; i < size(); ++i) act(entries_[i], i < n);
+    static_assert(keeps_order);
+    std::size_t const b = n < size() ? bucket_of(n) : starts_.size() - 1;
+    for (std::size_t i = 0; i < starts_[b]; ++i) act(entries_[i], true);
+    if (n == size()) return;
+    Entry const* const entries = look_into(b).entries;
+    for (std::size_t i = starts_[b]; i < starts_[b + 1]; ++i) act(entries[i - starts_[b]], i < n);
+    for (std::size_t i = starts_[b + 1]; i < size(); ++i) act(entries_[i], false);
   }
 
  private:
   static constexpr std::size_t most = 256;
   static constexpr std::size_t stride = 256;
+  static constexpr bool keeps_order = requires { Entry::keeps_order; };
   struct looked_into {
     std::atomic<bool> done{false};
-    std::vector<cell_sums> marks;  // running sums at every `stride`-th entry
+    Entry const* entries = nullptr;  // in rising order
+    std::vector<cell_sums> marks;    // running sums at every `stride`-th entry
+    std::vector<Entry> apart;        // the entries, where the column keeps its order
   };
 
   /// Splitters as a search tree: node k has children 2 k and 2 k + 1, larger values on the right.
@@ -135,35 +147,39 @@ class column_buckets {
   [[nodiscard]] std::size_t bucket_of(std::size_t i) const noexcept {
     return static_cast<std::size_t>(std::upper_bound(starts_.begin(), starts_.end(), i) - starts_.begin()) - 1;
   }
-  std::vector<cell_sums> const& look_into(std::size_t b) const {
+  looked_into const& look_into(std::size_t b) const {
     looked_into& bucket = sorted_[b];
-    if (bucket.done.load(std::memory_order_acquire)) return bucket.marks;
+    if (bucket.done.load(std::memory_order_acquire)) return bucket;
     std::lock_guard const lock(mutex_);
-    if (bucket.done.load(std::memory_order_relaxed)) return bucket.marks;
-    auto const from = entries_.begin() + static_cast<std::ptrdiff_t>(starts_[b]);
-    auto const to = entries_.begin() + static_cast<std::ptrdiff_t>(starts_[b + 1]);
-    std::sort(from, to, [](Entry const& x, Entry const& y) { return x.value < y.value; });
+    if (bucket.done.load(std::memory_order_relaxed)) return bucket;
+    std::size_t const n = starts_[b + 1] - starts_[b];
+    Entry* entries = entries_.data() + starts_[b];
+    if constexpr (keeps_order) {
+      bucket.apart.assign(entries, entries + n);
+      entries = bucket.apart.data();
+    }
+    std::sort(entries, entries + n, [](Entry const& x, Entry const& y) { return x.value < y.value; });
     cell_sums running = before_[b];
     std::vector<cell_sums> marks{running};
-    for (std::size_t i = starts_[b]; i < starts_[b + 1]; ++i) {
-      if (i > starts_[b] && (i - starts_[b]) % stride == 0) marks.push_back(running);
-      running.add(entries_[i].copies(), entries_[i].weight);
+    for (std::size_t i = 0; i < n; ++i) {
+      if (i > 0 && i % stride == 0) marks.push_back(running);
+      running.add(entries[i].copies(), entries[i].weight);
     }
     bucket.marks = std::move(marks);
+    bucket.entries = entries;
     bucket.done.store(true, std::memory_order_release);
-    return bucket.marks;
+    return bucket;
   }
   [[nodiscard]] std::size_t bound(std::size_t i, bool past) const {
     std::size_t const b = bucket_of(i);
-    look_into(b);
-    auto const from = entries_.begin() + static_cast<std::ptrdiff_t>(starts_[b]);
-    auto const to = entries_.begin() + static_cast<std::ptrdiff_t>(starts_[b + 1]);
-    double const x = entries_[i].value;
-    auto const end = std::partition_point(from, to, [&](Entry const& e) { return past ? e.value <= x : e.value < x; });
-    return static_cast<std::size_t>(end - entries_.begin());
+    Entry const* const from = look_into(b).entries;
+    Entry const* const to = from + (starts_[b + 1] - starts_[b]);
+    double const x = from[i - starts_[b]].value;
+    Entry const* const end = std::partition_point(from, to, [&](Entry const& e) { return past ? e.value <= x : e.value < x; });
+    return starts_[b] + static_cast<std::size_t>(end - from);
   }
 
-  std::vector<Entry> mutable entries_;
+  std::vector<Entry> mutable entries_;           // by bucket
   std::vector<std::size_t> starts_;              // of each bucket, and the end
   std::vector<cell_sums> before_, after_;        // sums of the buckets below each, and of each and those above
   std::unique_ptr<looked_into[]> sorted_;

@@ -23,6 +23,7 @@ struct plain_entry {
   [[nodiscard]] static constexpr double copies() noexcept { return 1.0; }
 };
 struct counted_entry {
+  static constexpr bool keeps_order = true;  // sums over groups go through all entries
   double value, weight, count;
   std::uint32_t group;
   [[nodiscard]] double copies() const noexcept { return count; }
@@ -30,7 +31,7 @@ struct counted_entry {
 
 /// The values of one readout in rising order with their weights: what a
 /// quantile and its Woodruff limits are read from, at any level.
-/// Memory: 16 bytes an entry, 32 with counts or groups.
+/// Memory: 16 bytes an entry; with counts or groups 32, and as many again of those that were looked into.
 class weighted_column {
   template <class Act>
   decltype(auto) at(Act act) const {
