@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: BSL-1.0
+// legs: plain
 // Every instrument against the distribution of Boost.Math that has its name,
 // where probabilities are large enough for those: densities, both tails, and
 // counts and tails of counts.

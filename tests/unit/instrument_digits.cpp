@@ -49,6 +49,13 @@ class worst_row {
   int rows_ = 0;
 };
 
+// Sums that -ffast-math puts in another order round otherwise: twice the error is allowed there.
+#if defined(__FAST_MATH__)
+constexpr double reordered = 2.0;
+#else
+constexpr double reordered = 1.0;
+#endif
+
 mp const pi = boost::math::constants::pi<mp>();
 
 mp normal_above(mp const& z) { return boost::math::erfc(mp(z / sqrt(mp(2)))) / 2; }
@@ -175,7 +182,7 @@ TEST_CASE("two-part and lognormal noise") {
         }
       }
     }
-  CHECK(two.report() < 2e-15);
+  CHECK(two.report() < 2e-15 * reordered);
   CHECK(density.report() < 3e-15);
   CHECK(around.report() < 1e-14);
 }

@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: BSL-1.0
+// legs: plain
 #include <doctest/doctest.h>
 
 #include <steelyard/draw/draws.hpp>

@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: BSL-1.0
+// legs: plain
 // Conformity of a measured item: JCGM 106:2012 and its successor JCGM GUM-5:2026,
 // plain lambda weighters, within 5 reported standard errors of the exact value.
 

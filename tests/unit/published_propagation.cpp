@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: BSL-1.0
+// legs: plain
 // Propagation with all weights equal: with no reading, the library is plain Monte
 // Carlo propagation, as in JCGM 101:2008 (GUM Supplement 1), clause 9.
 // Compared with exact values beside the published ones, within 5 reported standard errors.

@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: BSL-1.0
+// legs: plain
 // Published readings with exact posteriors: draws from the prior, weighed by lambdas
 // that keep every constant, against closed forms, within 5 reported standard errors.
 

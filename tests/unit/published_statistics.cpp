@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: BSL-1.0
+// legs: plain
 // NIST Statistical Reference Datasets, univariate summary statistics: certified means
 // and standard deviations, with all weights equal, with every log-weight shifted by
 // +-700, as integer counts and as weights.

@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: BSL-1.0
+// legs: plain
 // Published figures about weights: effective sizes, the variance and bias of a
 // self-normalised mean, histogram and quantile conventions.
 

@@ -8,6 +8,7 @@
 #include <vector>
 
 #include <steelyard/base/algorithm.hpp>
+#include <steelyard/base/bits.hpp>
 #include <steelyard/base/kernels.hpp>
 
 namespace steelyard::inline v1::detail {
@@ -22,10 +23,11 @@ class whole_shares {
     double const total = total_of(weights);
     if (!(total > 0.0)) return;
     lift_ = total < 0x1p-900 ? 0x1p600 : 1.0;
-    factor_ = static_cast<double>(whole) / (total * lift_);
+    factor_ = static_cast<double>(whole) / fence(total * lift_);
   }
   [[nodiscard]] std::uint64_t operator()(double weight) const noexcept {
-    return static_cast<std::uint64_t>(static_cast<std::int64_t>(weight * lift_ * factor_ + 0.5));
+    // Fenced, since lift times factor alone may overflow.
+    return static_cast<std::uint64_t>(static_cast<std::int64_t>(fence(weight * lift_) * factor_ + 0.5));
   }
 
  private:
