@@ -69,6 +69,7 @@ find_missing() {
   if [ "$1" = tests ]; then
     includes doctest/doctest.h || missing+=(doctest)
     includes benchmark/benchmark.h || missing+=(benchmark)
+    includes gtest/gtest.h || missing+=(googletest)
   fi
 }
 
@@ -94,6 +95,10 @@ package() {
     dnf:benchmark) echo google-benchmark-devel ;;
     brew:benchmark) echo google-benchmark ;;
     *:benchmark) echo benchmark ;;
+    apt:googletest) echo libgtest-dev ;;
+    dnf:googletest) echo gtest-devel ;;
+    pacman:googletest) echo gtest ;;
+    brew:googletest) echo googletest ;;
     apt:pkg-config) echo pkg-config ;;
     dnf:pkg-config) echo pkgconf-pkg-config ;;
     *:pkg-config) echo pkgconf ;;
@@ -110,7 +115,7 @@ tell_how() {
   if [ -z "$compiler" ]; then
     # No header could be tried; the line names all that may be needed.
     missing+=(boost xtensor)
-    if [ "$1" = tests ]; then missing+=(doctest benchmark); fi
+    if [ "$1" = tests ]; then missing+=(doctest benchmark googletest); fi
   fi
   say "Missing: ${missing[*]}. Install with the line for this system, and start again:"
   say "  Debian, Ubuntu   sudo apt-get update && sudo apt-get install -y $(packages apt)"
