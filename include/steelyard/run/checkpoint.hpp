@@ -10,6 +10,7 @@
 
 #include <steelyard/base/chrono.hpp>
 #include <steelyard/base/error.hpp>
+#include <steelyard/base/function_ref.hpp>
 #include <steelyard/run/bytes.hpp>
 #include <steelyard/run/plan.hpp>
 #include <steelyard/run/run_worker.hpp>
@@ -28,8 +29,7 @@ class checkpoint_keeper {
 
   /// Calls load(reader, next block) with what was left, and returns the next block; 0 where nothing was.
   /// @throws bad_checkpoint for another version, kind, plan or length, or damaged bytes
-  template <class Load>
-  std::uint64_t take_up(run_shared& shared, Load load) {
+  std::uint64_t take_up(run_shared& shared, function_ref<void(byte_reader&)> load) {
     if (!plan_.checkpoint) return 0;
     std::vector<std::byte> const bytes = plan_.checkpoint->read();
     if (bytes.empty()) return 0;
@@ -59,8 +59,7 @@ class checkpoint_keeper {
   }
 
   /// Leaves a checkpoint after block `next` - 1: `store(writer)` adds the run's own bytes.
-  template <class Store>
-  void leave(std::uint64_t next, bool over, run_shared const& shared, Store store) {
+  void leave(std::uint64_t next, bool over, run_shared const& shared, function_ref<void(byte_writer&)> store) {
     if (!plan_.checkpoint) return;
     auto const start = clock::now();
     if (!over && start - last_ < 20 * cost_) return;

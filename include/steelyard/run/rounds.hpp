@@ -8,6 +8,7 @@
 #include <steelyard/base/algorithm.hpp>
 #include <steelyard/base/chrono.hpp>
 #include <steelyard/base/error.hpp>
+#include <steelyard/base/function_ref.hpp>
 #include <steelyard/base/text.hpp>
 #include <steelyard/estimate/block.hpp>
 #include <steelyard/estimate/diagnosis.hpp>
@@ -33,8 +34,8 @@ class rounds {
 
   /// Takes blocks in rounds. `take(first, last)` draws them, `failed()` counts runs set aside so far, `save(last,
   /// over)` may leave a checkpoint; `satisfied()` is asked after 1, 2, 4, ... blocks where there are targets.
-  template <class Take, class Failed, class Save, class Satisfied>
-  void each(Take take, Failed failed, Save save, bool targets, Satisfied satisfied) {
+  void each(function_ref<void(std::uint64_t, std::uint64_t)> take, function_ref<std::uint64_t()> failed,
+            function_ref<void(std::uint64_t, bool)> save, bool targets, function_ref<bool()> satisfied) {
     std::uint64_t goal = 1;
     while (targets && goal <= next_) goal *= 2;
     while (next_ < last_) {
