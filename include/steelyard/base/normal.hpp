@@ -12,22 +12,18 @@ namespace steelyard::inline v1::detail {
 // Standard normal deviates: rational approximations of degree 7, about 1 part in 10^16
 //   [Wichura, Algorithm AS 241 (PPND16), Applied Statistics 37(3), 1988]
 
+inline constexpr double normal_middle_numerator[8] = {
+    3.3871328727963666080e0, 1.3314166789178437745e+2, 1.9715909503065514427e+3, 1.3731693765509461125e+4,
+    4.5921953931549871457e+4, 6.7265770927008700853e+4, 3.3430575583588128105e+4, 2.5090809287301226727e+3};
+inline constexpr double normal_middle_denominator[8] = {
+    1.0, 4.2313330701600911252e+1, 6.8718700749205790830e+2, 5.3941960214247511077e+3,
+    2.1213794301586595867e+4, 3.9307895800092710610e+4, 2.8729085735721942674e+4, 5.2264952788528545610e+3};
+
 /// z with P(Z < z) = 1/2 + q, |q| <= 0.425.
 /// Cost  one division.
 inline double normal_middle_quantile(double q) noexcept {
-  constexpr double a[8] = {3.3871328727963666080e0,  1.3314166789178437745e+2, 1.9715909503065514427e+3,
-                           1.3731693765509461125e+4, 4.5921953931549871457e+4, 6.7265770927008700853e+4,
-                           3.3430575583588128105e+4, 2.5090809287301226727e+3};
-  constexpr double b[8] = {1.0,
-                           4.2313330701600911252e+1,
-                           6.8718700749205790830e+2,
-                           5.3941960214247511077e+3,
-                           2.1213794301586595867e+4,
-                           3.9307895800092710610e+4,
-                           2.8729085735721942674e+4,
-                           5.2264952788528545610e+3};
   double const r = minus(0.180625, times(q, q));
-  return times(q, over(polynomial(a, r), polynomial(b, r)));
+  return times(q, over(polynomial(normal_middle_numerator, r), polynomial(normal_middle_denominator, r)));
 }
 
 /// z < 0 with P(Z < z) = p for a lower tail 0 < p < 0.075.

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: BSL-1.0
 #pragma once
 
+#include <bit>
 #include <cstddef>
 #include <cstdint>
 #include <span>
@@ -67,7 +68,16 @@ class draws {
 
   /// Standard normal, by inverting the nearer tail: rises with the word, and
   /// tails are right down to 2^-65. One word.
-  double normal() { return detail::normal_from_word((*this)()); }
+  double normal() {
+    if (normals_ahead_ != 0 && next_ != end_) {
+      std::uint64_t const made = next_[normals_ahead_];
+      if (made != 0) {
+        ++next_;
+        return std::bit_cast<double>(made);
+      }
+    }
+    return normal_afresh();
+  }
 
   /// Normal with mean and standard deviation. One word.
   /// @throws bad_argument unless both are finite and sd >= 0
@@ -145,6 +155,7 @@ class draws {
   static constexpr std::size_t buffer_words = 32;
 
   void refill();
+  double normal_afresh();
   [[noreturn]] static void refuse_interval(double a, double b);
 
   std::uint64_t const* next_ = buffer_;
@@ -157,6 +168,8 @@ class draws {
   word_source const* source_ = nullptr;           // a custom source, else Philox
   std::vector<std::uint64_t>* record_ = nullptr;  // recorded words, fresh ones appended
   std::uint64_t given_ = 0;                       // words the record held at the start
+  std::size_t normals_ahead_ = 0;                 // where a word's normal deviate may stand, from the word on; 0: nowhere
+  std::uint64_t normal_places_ = 0;               // those of the first 64 words that were wanted as normals and were not ready
   std::uint64_t buffer_[buffer_words];
 };
 
@@ -189,16 +202,23 @@ struct draws_access {
     d.next_ = first_words.data();
     d.end_ = first_words.data() + first_words.size();
     d.supplied_ = first_words.size();
+    d.normals_ahead_ = 0;
   }
 
-  /// On another stream of the same run, its first words already made. Cost: four stores.
+  /// On another stream of the same run, its first words already made. Cost: five stores.
+  /// @param normals_ahead  so many places behind a word stand the bits of its normal deviate, or 0 where it was not made;
+  ///                       0: none were
   /// @pre `d` was last put on a stream without a custom source or recorded words
-  static void move_on(draws& d, std::uint64_t stream, std::uint64_t const* first_words, std::size_t size) noexcept {
+  static void move_on(draws& d, std::uint64_t stream, std::uint64_t const* first_words, std::size_t size,
+                      std::size_t normals_ahead = 0) noexcept {
     d.stream_ = stream;
     d.next_ = first_words;
     d.end_ = first_words + size;
     d.supplied_ = size;
+    d.normals_ahead_ = normals_ahead;
   }
+  /// Bit k is set where word k of some stream was asked for as a normal deviate that was not ready.
+  static std::uint64_t normal_places(draws const& d) noexcept { return d.normal_places_; }
 
   /// On sample `sample` of a custom source.
   /// @pre the source outlives its use
@@ -246,6 +266,16 @@ inline void draws::refill() {
   }
   end_ = next_ + size;
   supplied_ += size;
+  normals_ahead_ = 0;
+}
+
+#if defined(__GNUC__)
+[[gnu::noinline]]
+#endif
+inline double draws::normal_afresh() {
+  std::uint64_t const place = words_used();
+  if (place < 64) normal_places_ |= std::uint64_t{1} << place;
+  return detail::normal_from_word((*this)());
 }
 
 inline void draws::refuse_interval(double a, double b) {

@@ -2,6 +2,7 @@
 #pragma once
 
 #include <array>
+#include <bit>
 #include <cstddef>
 #include <cstdint>
 #include <exception>
@@ -12,10 +13,12 @@
 #include <utility>
 #include <vector>
 
+#include <steelyard/base/algorithm.hpp>
 #include <steelyard/base/bits.hpp>
 #include <steelyard/base/functional.hpp>
 #include <steelyard/draw/draws.hpp>
 #include <steelyard/draw/first_words.hpp>
+#include <steelyard/draw/normal_words.hpp>
 #include <steelyard/draw/words.hpp>
 #include <steelyard/estimate/block.hpp>
 #include <steelyard/estimate/user_code.hpp>
@@ -141,7 +144,7 @@ class maker {
   void seat(std::uint64_t i) {
     std::uint64_t const at = i - ahead_first_;
     if (at < ahead_size_)
-      draws_access::move_on(draws_, i, words_.data() + at * words_each_, words_each_);
+      draws_access::move_on(draws_, i, words_.data() + at * words_each_, words_each_, normals_ahead_);
     else
       seat_afresh(i);
   }
@@ -154,12 +157,33 @@ class maker {
     if (i < expected_first_ || i >= expected_last_) return;
     std::uint64_t const known = words_each_ / 4, blocks = used > known ? (used < most_ahead ? used : most_ahead) : known;
     std::uint64_t const n = expected_last_ - i < batch ? expected_last_ - i : batch;
-    words_each_ = static_cast<std::size_t>(blocks * 4);
-    words_.resize(static_cast<std::size_t>(n) * words_each_);
-    first_words(terms_.seed, purpose::run, 0, i, n, blocks, words_);
+    std::size_t const each = static_cast<std::size_t>(blocks * 4);
+    lay_out(each, draws_access::normal_places(draws_));
+    first_words(terms_.seed, purpose::run, 0, i, n, blocks, std::span(words_).first(static_cast<std::size_t>(n) * each));
+    if (normals_ahead_ != 0) make_normals(static_cast<std::size_t>(n));
     ahead_first_ = i;
     ahead_size_ = n;
-    draws_access::move_on(draws_, i, words_.data(), words_each_);
+    draws_access::move_on(draws_, i, words_.data(), words_each_, normals_ahead_);
+  }
+  /// Room for the words of a batch, and as much behind for the normal deviates of those places where the sampler asked for
+  /// one before; 0 at the others.
+  void lay_out(std::size_t each, std::uint64_t places) {
+    if (each == words_each_ && places == normal_places_ && !words_.empty()) return;
+    words_each_ = each;
+    normal_places_ = places;
+    normals_ahead_ = places == 0 ? 0 : batch * each;
+    words_.assign(batch * each + normals_ahead_, 0);
+  }
+  void make_normals(std::size_t n) {
+    std::uint64_t column[batch] = {};
+    double normals[batch];
+    for (std::size_t k = 0; k < words_each_; ++k) {
+      if ((normal_places_ >> k & 1u) == 0) continue;
+      std::uint64_t* const at = words_.data() + k;
+      for (std::size_t s = 0; s < n; ++s) column[s] = at[s * words_each_];
+      normals_from_words(column, normals, (n + 7) / 8 * 8);
+      for (std::size_t s = 0; s < n; ++s) at[normals_ahead_ + s * words_each_] = std::bit_cast<std::uint64_t>(normals[s]);
+    }
   }
 
   instance_t<Sampler> sampler_;
@@ -171,6 +195,8 @@ class maker {
   std::uint64_t expected_first_ = 0, expected_last_ = 0;  // samples that come in turn
   std::uint64_t ahead_first_ = 0, ahead_size_ = 0;        // those of them whose first words are made
   std::size_t words_each_ = 4;
+  std::size_t normals_ahead_ = 0;     // from a word to its normal deviate; 0: none are made
+  std::uint64_t normal_places_ = 0;   // those of each sample's words that are made to normal deviates too
   std::vector<std::uint64_t> words_;
 };
 
