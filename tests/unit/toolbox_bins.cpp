@@ -63,3 +63,39 @@ TEST_CASE("bins: every vector width finds the same places") {
     CHECK(plain == same);
   }
 }
+
+TEST_CASE("histogram: some bins together are the event of falling in any of them, error bar and verdict too") {
+  auto const edges = sy::equal_bins(-2.0, 2.0, 16);
+  auto const itself = [](double x) { return x; };
+  auto const middle = [](double x) { return x >= -0.5 && x < 1.0; };
+  auto const far = [](double x) { return x >= 1.75 && x <= 2.0; };
+  auto const read_one = [](double x) { return sy::log_likelihood{-0.5 * (x - 0.3) * (x - 0.3) / 0.04}; };
+  std::vector<double> states(3'000);
+  sy::draws source(11);
+  for (double& each : states) each = source.normal();
+  std::vector<std::uint32_t> labels(states.size());
+  for (std::size_t i = 0; i < labels.size(); ++i) labels[i] = static_cast<std::uint32_t>(i % 20);
+  for (bool const grouped : {false, true}) {
+    CAPTURE(grouped);
+    auto const sample = grouped ? sy::weigh(states, read_one, {.groups = labels}) : sy::weigh(states, read_one);
+    auto const histogram = sample.histogram(itself, edges);
+    auto const same = [](sy::estimate const& a, sy::estimate const& b) {
+      CHECK(a.value == doctest::Approx(b.value).epsilon(1e-12));
+      CHECK(a.standard_error == doctest::Approx(b.standard_error).epsilon(1e-9));
+      CHECK(a.carriers == doctest::Approx(b.carriers).epsilon(1e-8));
+      CHECK(a.verdict() == b.verdict());
+      CHECK(a.never_seen() == b.never_seen());
+    };
+    same(histogram.probability(6, 12), sample.probability(middle));
+    same(histogram.probability(15, 16), sample.probability(far));
+    same(histogram.probability(15, 16), histogram.probability(15));
+    // Their errors do not simply add: what is in one bin is not in the next.
+    double squares = 0.0;
+    for (std::size_t b = 0; b < 16; ++b) squares += std::pow(histogram.probability(b).standard_error, 2);
+    CHECK(histogram.probability(0, 16).standard_error < 0.1 * std::sqrt(squares));
+    CHECK_THROWS_WITH_AS(histogram.probability(3, 3),
+                         "histogram: bins 3 up to 3 were asked for together; a range has at least one bin and ends by 16",
+                         sy::bad_argument);
+    CHECK_THROWS_AS(histogram.probability(3, 17), sy::bad_argument);
+  }
+}

@@ -2,6 +2,7 @@
 #pragma once
 
 #include <cstddef>
+#include <cstdint>
 #include <iosfwd>
 #include <string>
 #include <utility>
@@ -23,7 +24,7 @@ class histogram_result {
  public:
   histogram_result(bins edges, std::vector<detail::cell_sums> cells, detail::grouped_cells const& groups,
                    run_facts const& facts)
-      : edges_(std::move(edges)), mode_(edges_, cells, groups, facts) {
+      : edges_(std::move(edges)), mode_(edges_, cells, groups, facts), groups_(groups), facts_(facts) {
     std::size_t const n = cells.size();
     cells.resize(edges_.size() + 3);
     detail::cell_sums inside;
@@ -42,6 +43,7 @@ class histogram_result {
       inside_.push_back(detail::share_estimate(cells[b].weight, rest_inside[b].weight, within, cells[b].weight > 0.0,
                                                rest_inside[b].weight > 0.0, facts));
     }
+    cells_ = std::move(cells);
   }
 
   [[nodiscard]] std::size_t size() const noexcept { return edges_.size(); }
@@ -51,6 +53,20 @@ class histogram_result {
 
   /// Probability of bin b, as a share of the whole sample.
   [[nodiscard]] estimate const& probability(std::size_t b) const { return shares_.at(checked(b)); }
+  /// Probability of bins first, first + 1, ..., last - 1 together. Its error bar is its own: what one bin has too much of,
+  /// another has too little of.
+  /// @throws bad_argument unless first < last <= size()
+  estimate probability(std::size_t first, std::size_t last) const {
+    if (first >= last || last > size())
+      throw bad_argument("histogram: bins " + std::to_string(first) + " up to " + std::to_string(last) +
+                         " were asked for together; a range has at least one bin and ends by " + std::to_string(size()));
+    detail::cell_sums in, out;
+    for (std::size_t b = 0; b < cells_.size(); ++b) (first <= b && b < last ? in : out) += cells_[b];
+    auto const chosen = [=](std::uint32_t cell) { return first <= cell && cell < last; };
+    error_terms const terms = groups_.empty() ? detail::share_terms(in, out)
+                                              : groups_.terms(chosen, [](std::uint32_t) { return true; });
+    return detail::share_estimate(in.weight, out.weight, terms, in.weight > 0.0, out.weight > 0.0, facts_);
+  }
   /// Probability of bin b given that the readout lies within the edges.
   [[nodiscard]] estimate const& probability_inside(std::size_t b) const { return inside_.at(checked(b)); }
   /// Probability density in bin b: its probability over its width, per unit of the readout.
@@ -86,6 +102,9 @@ class histogram_result {
   mode_result mode_;
   std::vector<estimate> shares_;
   std::vector<estimate> inside_;
+  std::vector<detail::cell_sums> cells_;
+  detail::grouped_cells groups_;
+  run_facts facts_;
 };
 
 /// One line a bin: its edges and its probability with the standard error.
