@@ -15,6 +15,7 @@ namespace steelyard::inline v1 {
 ///   that the carriers at that very end allow, so an end with too little beyond it is unbounded, not clipped
 ///                                                            [Woodruff, JASA 47, 1952, 635]
 ///   standard error: half the width of the 68.27 % limits.
+/// Handed on as a plain `estimate` it answers value -+ t se in place of Woodruff limits.
 class quantile_result : public estimate {
  public:
   quantile_result() = default;
