@@ -162,12 +162,13 @@ template <class E, class Weighter>
   requires(detail::rank_of<E> == 2)
 auto weigh(xt::xexpression<E> const& rows, Weighter const& weighter, weigh_options options = {}) {
   using X = std::span<double const>;
-  static_assert(weighter_for<Weighter, X>, "steelyard: weigh() takes a weighter of rows: it is called as const with a "
-                                           "std::span<double const> and returns log_likelihood or likelihood");
-  if constexpr (weighter_for<Weighter, X>) {
+  constexpr bool fine = detail::may_weigh<true, Weighter, X>();
+  if constexpr (fine) {
     detail::array_rows held{xt::xtensor<double, 2>(rows.derived_cast())};
     std::size_t const size = held.size();
     return detail::weigh_states<X>(std::move(held), size, weighter, std::move(options));
+  } else {
+    return detail::refused<weighted_sample<X>>();
   }
 }
 

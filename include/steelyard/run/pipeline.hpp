@@ -18,8 +18,10 @@
 #include <steelyard/run/plan.hpp>
 #include <steelyard/run/replay_store.hpp>
 #include <steelyard/run/slots.hpp>
+#include <steelyard/sample/front_door.hpp>
 #include <steelyard/sample/resample.hpp>
 #include <steelyard/sample/weigh.hpp>
+#include <steelyard/weigh/front_door.hpp>
 
 namespace steelyard::inline v1 {
 
@@ -29,10 +31,8 @@ namespace steelyard::inline v1 {
 /// Both are stored by value and called as const, perhaps from several threads at once.
 template <class Sampler, class Weighter>
 class pipeline {
-  static constexpr bool fits = detail::may_pipe<true, Sampler, Weighter>();
-
  public:
-  using state_type = std::conditional_t<fits, state_of_t<Sampler>, int>;
+  using state_type = std::conditional_t<detail::may_draw<false, Sampler>(), state_of_t<Sampler>, detail::no_state>;
 
   pipeline(Sampler draw_with, Weighter weigh_with) : sampler_(std::move(draw_with)), weighter_(std::move(weigh_with)) {}
 
@@ -49,7 +49,7 @@ class pipeline {
       detail::keeping_run(sampler_, weighter_, how, 0, *origin, part);
       return assemble(std::move(origin), std::move(part), how.keep);
     } else {
-      throw error("pipeline: not usable");
+      detail::refused<void>();
     }
   }
 
@@ -75,7 +75,7 @@ class pipeline {
       detail::keeping_run(sampler_, weighter_, how, from, *origin, part);
       return assemble(std::move(origin), std::move(part), how.keep);
     } else {
-      throw error("pipeline: not usable");
+      detail::refused<void>();
     }
   }
 
@@ -85,6 +85,8 @@ class pipeline {
     constexpr bool fine = fits && (detail::may_ask<true, Es, state_type, true>() && ...);
     if constexpr (fine)
       return pass(how, std::tuple<detail::bound_t<Es, state_type>...>(detail::for_state<state_type>(questions)...));
+    else
+      return detail::refused<detail::refused_answers<Es...>>();
   }
 
   template <class Readout>
@@ -147,7 +149,7 @@ class pipeline {
       return ensemble<state_type>(std::move(states), std::move(places), samples, slots.weights,
                                   answers.diagnosis().effective_size());
     } else {
-      throw error("pipeline: not usable");
+      detail::refused<void>();
     }
   }
 
@@ -167,11 +169,13 @@ class pipeline {
         return detail::call(call, source);
       }
     } else {
-      throw error("pipeline: not usable");
+      detail::refused<void>();
     }
   }
 
  private:
+  static constexpr std::bool_constant<detail::may_draw<true, Sampler>() && detail::may_weigh<true, Weighter, state_type>()>
+      fits{};  // in its type, so that declaring a pipeline is enough to be told
   using maker_t = detail::maker<Sampler, Weighter>;
 
   weighted_sample<state_type> assemble(std::shared_ptr<detail::sample_origin> origin, detail::kept_part<state_type> part,
@@ -236,6 +240,8 @@ class pipeline {
     constexpr bool fine = fits && detail::may_ask<true, E, state_type, true>();
     if constexpr (fine)
       return pass(how, std::tuple<detail::bound_t<E, state_type>>(detail::for_state<state_type>(question))).template get<0>();
+    else
+      return detail::refused<steelyard::estimate>();
   }
 
   template <class... Es>

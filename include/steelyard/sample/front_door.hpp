@@ -3,9 +3,16 @@
 
 #include <type_traits>
 
+#include <steelyard/estimate/answers.hpp>
+#include <steelyard/estimate/estimate.hpp>
 #include <steelyard/estimate/estimator.hpp>
+#include <steelyard/weigh/front_door.hpp>
 
 namespace steelyard::inline v1::detail {
+
+/// As many answers as there are questions, where one of them is refused.
+template <class... Es>
+using refused_answers = answers<std::conditional_t<std::is_void_v<Es>, void, estimate>...>;
 
 /// Whether E can be asked of states of type X. With `Speak`, one sentence says
 /// what is wrong, and nothing behind it is instantiated.
@@ -15,6 +22,8 @@ consteval bool may_ask() {
     static_assert(!Speak || estimator<E>,
                   "steelyard: this is not an estimator: ask expectation(f), probability(f), ... or write one with "
                   "readout, fresh, add, rescale, +=, value and fields");
+    return false;
+  } else if constexpr (std::is_same_v<X, no_state>) {
     return false;
   } else if constexpr (!reads_v<E, X>) {
     static_assert(!Speak || reads_v<E, X>,

@@ -17,6 +17,7 @@
 #include <steelyard/base/text.hpp>
 #include <steelyard/sample/resample.hpp>
 #include <steelyard/sample/weighted_sample.hpp>
+#include <steelyard/weigh/front_door.hpp>
 
 namespace steelyard::inline v1 {
 
@@ -127,9 +128,8 @@ template <class Range, class Weighter>
   })
 auto weigh(Range&& range, Weighter const& weighter, weigh_options options = {}) {
   using X = std::iter_value_t<decltype(std::begin(range))>;
-  static_assert(weighter_for<Weighter, X>, "steelyard: weigh() takes a weighter of these states: it is called as const "
-                                           "and returns log_likelihood or likelihood, never a bare number");
-  if constexpr (weighter_for<Weighter, X>) {
+  constexpr bool fine = detail::may_weigh<true, Weighter, X>();
+  if constexpr (fine) {
     using R = std::remove_cvref_t<Range>;
     if constexpr (std::is_same_v<R, std::span<X const>>) {
       return detail::weigh_states<X>(range, range.size(), weighter, std::move(options));
@@ -151,6 +151,8 @@ auto weigh(Range&& range, Weighter const& weighter, weigh_options options = {}) 
       std::size_t const size = own.size();
       return detail::weigh_states<X>(std::move(own), size, weighter, std::move(options));
     }
+  } else {
+    return detail::refused<weighted_sample<X>>();
   }
 }
 

@@ -105,9 +105,8 @@ class weighted_sample {
   /// The same states under another weighter; base weights stay.
   template <class Weighter>
   weighted_sample reweigh(Weighter const& weighter) const {
-    static_assert(weighter_for<Weighter, X>, "steelyard: reweigh() takes a weighter of this state: it is called as "
-                                             "const and returns log_likelihood or likelihood");
-    if constexpr (weighter_for<Weighter, X>)
+    constexpr bool fine = detail::may_weigh<true, Weighter, X>();
+    if constexpr (fine)
       return with_columns(detail::score_states<X>(*states_, *columns_, *origin_, weighter), "reweigh");
     else
       return *this;
@@ -139,7 +138,10 @@ class weighted_sample {
   template <class... Es>
   auto estimate(Es const&... questions) const {
     constexpr bool fine = (detail::may_ask<true, Es, X, false>() && ...);
-    if constexpr (fine) return ask(std::tuple<detail::bound_t<Es, X>...>(detail::for_state<X>(questions)...));
+    if constexpr (fine)
+      return ask(std::tuple<detail::bound_t<Es, X>...>(detail::for_state<X>(questions)...));
+    else
+      return detail::refused<detail::refused_answers<Es...>>();
   }
 
   template <class Readout>
@@ -278,7 +280,10 @@ class weighted_sample {
   template <class E>
   auto one(E const& question) const {
     constexpr bool fine = detail::may_ask<true, E, X, false>();
-    if constexpr (fine) return ask(std::tuple<detail::bound_t<E, X>>(detail::for_state<X>(question))).template get<0>();
+    if constexpr (fine)
+      return ask(std::tuple<detail::bound_t<E, X>>(detail::for_state<X>(question))).template get<0>();
+    else
+      return detail::refused<steelyard::estimate>();
   }
   template <class... Es>
   auto ask(std::tuple<Es...> const& bound) const {

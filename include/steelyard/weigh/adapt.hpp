@@ -71,7 +71,7 @@ class bounded {
   }
 
   template <class State>
-    requires detail::callable_v<Weighter, State const&>
+    requires weighter_for<Weighter, State> && detail::callable_v<Weighter, State const&>
   log_likelihood operator()(State const& state) const {
     double const score = detail::to_log(detail::call(weighter_, state));
     double const size = log_bound_ < 0.0 ? -log_bound_ : log_bound_;

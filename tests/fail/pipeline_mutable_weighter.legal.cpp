@@ -1,0 +1,9 @@
+#include <steelyard/core.hpp>
+
+int main() {
+  auto sampler = [](steelyard::draws& draws) { return draws.uniform(); };
+  auto weighter = [calls = 1](double x) { return steelyard::log_likelihood{-0.5 * x * calls}; };
+  steelyard::pipeline const pipe{sampler, weighter};
+  auto const sample = pipe.run({.size = 1000});
+  return sample.expectation([](double x) { return x; }).value > 2.0;
+}

@@ -1,0 +1,11 @@
+#include <steelyard/core.hpp>
+
+int main() {
+  auto sampler = [](steelyard::draws& draws) { return draws.uniform(); };
+  auto weighter = [](double x) { return steelyard::log_likelihood{-0.5 * x * x}; };
+  steelyard::pipeline const pipe{sampler, weighter};
+  auto itself = [](double x) { return x; };
+  auto const sample = pipe.run({.size = 1000});
+  auto const [mean, median] = sample.estimate(steelyard::expectation(itself), steelyard::quantile(itself, 0.5));
+  return mean.value > median.value;
+}

@@ -1,0 +1,13 @@
+// expect: steelyard: this readout cannot read this state
+#include <steelyard/core.hpp>
+
+#include <string>
+
+int main() {
+  auto sampler = [](steelyard::draws& draws) { return draws.uniform(); };
+  auto weighter = [](double x) { return steelyard::log_likelihood{-0.5 * x * x}; };
+  steelyard::pipeline const pipe{sampler, weighter};
+  auto const sample = pipe.run({.size = 1000});
+  auto const length = sample.expectation([](std::string const& name) { return name.size(); });
+  return length.value > 2.0;
+}
