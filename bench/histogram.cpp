@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: BSL-1.0
 // Weighted histograms of 100 even bins with what their standard errors need.
-#include <array>
+#include <algorithm>
 #include <cstdint>
 #include <random>
 #include <vector>
@@ -11,6 +11,10 @@
 
 #if __has_include(<boost/histogram.hpp>)
 #include <boost/histogram.hpp>
+#endif
+// GCC 12 takes the shape of an adapted vector, which has any number of dimensions, for one that is read past its end.
+#if defined(__GNUC__) && !defined(__clang__)
+#pragma GCC diagnostic ignored "-Warray-bounds"
 #endif
 #include <steelyard/array/xtensor.hpp>
 #include <xtensor/xadapt.hpp>
@@ -69,26 +73,37 @@ BENCH_ROW(boost_histogram, "histogram of 100 even bins | Boost.Histogram, weight
 template <class Bins>
 void beside_xtensor(benchmark::State& state, double wanted, std::size_t few, Bins bins_of) {
   std::size_t const n = all().values.size();
-  std::array<std::size_t, 1> const shape{few};
-  auto const values = xt::adapt(all().values.data(), few, xt::no_ownership(), shape);
-  auto const weights = xt::adapt(all().weights.data(), few, xt::no_ownership(), shape);
   bench::compare(state, wanted, bench::side{n, [&] { benchmark::DoNotOptimize(ours(n).probability(50).standard_error); }},
                  bench::side{few, [&] {
-                   xt::xtensor<double, 1> const h = bins_of(values, weights);
+                   xt::xtensor<double, 1> const h = bins_of();
                    benchmark::DoNotOptimize(h(50));
                  }});
 }
-void xtensor_edges(benchmark::State& state) {
+xt::xtensor<double, 1> container(std::vector<double> const& from, std::size_t n) {
+  xt::xtensor<double, 1> to = xt::xtensor<double, 1>::from_shape({n});
+  std::copy_n(from.begin(), n, to.begin());
+  return to;
+}
+void xtensor_adapted(benchmark::State& state) {
+  std::size_t const n = all().values.size();
   xt::xtensor<double, 1> const edges = xt::linspace(0.0, 1.0, 101);
-  beside_xtensor(state, 500.0, bench::samples(1'000'000),
-                 [&](auto const& values, auto const& weights) { return xt::histogram(values, edges, weights); });
+  auto values = all().values, weights = all().weights;
+  std::vector<std::size_t> const shape{n};
+  auto const x = xt::adapt(values, shape), w = xt::adapt(weights, shape);
+  beside_xtensor(state, 500.0, n, [&] { return xt::histogram(x, edges, w); });
 }
-BENCH_ROW(xtensor_edges, "histogram of 100 even bins | xt::histogram with edges", 3);
+BENCH_ROW(xtensor_adapted, "histogram of 100 even bins | xt::histogram with edges, on adapted vectors", 1);
+void xtensor_edges(benchmark::State& state) {
+  std::size_t const few = bench::samples(1'000'000);
+  xt::xtensor<double, 1> const edges = xt::linspace(0.0, 1.0, 101), x = container(all().values, few), w = container(all().weights, few);
+  beside_xtensor(state, 0.0, few, [&] { return xt::histogram(x, edges, w); });
+}
+BENCH_ROW(xtensor_edges, "histogram of 100 even bins | xt::histogram with edges, on containers of its own, 1e6", 3);
 void xtensor_ends(benchmark::State& state) {
-  beside_xtensor(state, 1.0, all().values.size(), [](auto const& values, auto const& weights) {
-    return xt::histogram(values, std::size_t{100}, weights, 0.0, 1.0);
-  });
+  std::size_t const few = bench::samples(1'000'000);
+  xt::xtensor<double, 1> const x = container(all().values, few), w = container(all().weights, few);
+  beside_xtensor(state, 0.0, few, [&] { return xt::histogram(x, std::size_t{100}, w, 0.0, 1.0); });
 }
-BENCH_ROW(xtensor_ends, "histogram of 100 even bins | xt::histogram with two ends, sums alone", 8);
+BENCH_ROW(xtensor_ends, "histogram of 100 even bins | xt::histogram with two ends, sums alone, 1e6", 8);
 
 }  // namespace

@@ -33,11 +33,14 @@ void ours_once(std::vector<double>& weights) {
 void plain_exp(benchmark::State& state) {
   std::vector<double> ours(logs().size()), twin(logs().size());
   bench::compare(state, 5.0, bench::side{ours.size(), [&] { ours_once(ours); }}, bench::side{twin.size(), [&] {
+    double const* const from = logs().data();
+    double* const to = twin.data();
+    std::size_t const n = twin.size();
     double top = std::numeric_limits<double>::lowest(), sum = 0.0, squares = 0.0;
-    for (double const l : logs()) top = l > top ? l : top;
-    for (std::size_t i = 0; i < twin.size(); ++i) {
-      double const w = std::exp(logs()[i] - top);
-      twin[i] = w;
+    for (std::size_t i = 0; i < n; ++i) top = from[i] > top ? from[i] : top;
+    for (std::size_t i = 0; i < n; ++i) {
+      double const w = std::exp(from[i] - top);
+      to[i] = w;
       sum += w;
       squares += w * w;
     }
