@@ -5,6 +5,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <map>
 #include <sstream>
 #include <string>
 
@@ -58,6 +59,13 @@ constexpr double reordered = 1.0;
 
 mp const pi = boost::math::constants::pi<mp>();
 
+/// log Gamma(x), each value found once
+mp const& log_gamma(mp const& x) {
+  static std::map<mp, mp> known;
+  auto const [place, fresh] = known.try_emplace(x);
+  if (fresh) place->second = boost::math::lgamma(x);
+  return place->second;
+}
 mp normal_above(mp const& z) { return boost::math::erfc(mp(z / sqrt(mp(2)))) / 2; }
 mp log_normal_density(mp const& z) { return -z * z / 2 - log(2 * pi) / 2; }
 /// P(a < Z < b), in the tail that loses nothing
@@ -79,8 +87,7 @@ mp log_beta_below(mp const& a, mp const& b, mp const& x) {
     f *= c * d;
     if (abs(c * d - 1) < mp(1e-45)) break;
   }
-  using boost::math::lgamma;
-  return a * log(x) + b * log(1 - x) - log(a) - mp(lgamma(a)) - mp(lgamma(b)) + mp(lgamma(mp(a + b))) + log(f);
+  return a * log(x) + b * log(1 - x) - log(a) - log_gamma(a) - log_gamma(b) + log_gamma(a + b) + log(f);
 }
 mp beta_below(mp const& a, mp const& b, mp const& x) {
   return x < (a + 1) / (a + b + 2) ? mp(exp(log_beta_below(a, b, x))) : mp(1 - exp(log_beta_below(b, a, 1 - x)));
@@ -91,8 +98,7 @@ mp student_above(mp const& z, mp const& dof) {
   return beta_below(dof / 2, mp(0.5), dof / (dof + z * z)) / 2;
 }
 mp log_student_density(mp const& z, mp const& dof) {
-  using boost::math::lgamma;
-  return mp(lgamma(mp((dof + 1) / 2))) - mp(lgamma(mp(dof / 2))) - log(pi * dof) / 2 -
+  return log_gamma(mp((dof + 1) / 2)) - log_gamma(mp(dof / 2)) - log(pi * dof) / 2 -
          (dof + 1) / 2 * log(1 + z * z / dof);
 }
 
@@ -108,7 +114,7 @@ mp gamma_above(mp const& a, mp const& x) {
     f *= c * d;
     if (abs(c * d - 1) < mp(1e-45)) break;
   }
-  return exp(a * log(x) - x - mp(boost::math::lgamma(a))) / f;
+  return exp(a * log(x) - x - log_gamma(a)) / f;
 }
 mp gamma_below(mp const& a, mp const& x) {
   if (x <= 0) return 0;
@@ -118,7 +124,7 @@ mp gamma_below(mp const& a, mp const& x) {
     term *= x / (a + k);
     sum += term;
   }
-  return exp(a * log(x) - x - mp(boost::math::lgamma(mp(a + 1)))) * sum;
+  return exp(a * log(x) - x - log_gamma(a + 1)) * sum;
 }
 
 double const half_widths[] = {1e-12, 1e-6, 1e-3, 0.05, 0.2, 0.5, 1.0, 3.0, 20.0, 500.0};
@@ -238,7 +244,6 @@ TEST_CASE("Student noise: density, tails and intervals, from half a degree of fr
 }
 
 TEST_CASE("counts: probabilities from one count to a thousand million, tails") {
-  using boost::math::lgamma;
   worst_row poisson("poisson_count"), poisson_tails("poisson_count tails"), binomial("binomial_count"),
       binomial_tails("binomial_count tails"), scattered("negative_binomial_count"),
       scattered_tails("negative_binomial_count tails");
@@ -246,7 +251,7 @@ TEST_CASE("counts: probabilities from one count to a thousand million, tails") {
     for (double const z : {-60.0, -5.0, -0.3, 0.0, 0.4, 6.0, 60.0}) {
       double const n = std::max(0.0, std::floor(mean + z * std::sqrt(mean)));
       auto const instrument = sy::poisson_count();
-      poisson.add(instrument.score(n, mean), mp(n) * log(mp(mean)) - mp(mean) - mp(lgamma(mp(n + 1))), mean, n);
+      poisson.add(instrument.score(n, mean), mp(n) * log(mp(mean)) - mp(mean) - log_gamma(mp(n + 1)), mean, n);
       if (mean > 1e8) continue;
       poisson_tails.add(instrument.score(sy::over(n), mean), log(gamma_below(n + 1, mean)), mean, n, "over");
       if (n > 0.0) poisson_tails.add(instrument.score(sy::under(n), mean), log(gamma_above(n, mean)), mean, n, "under");
@@ -262,7 +267,7 @@ TEST_CASE("counts: probabilities from one count to a thousand million, tails") {
       for (double const z : {-40.0, -3.0, 0.0, 5.0, 60.0}) {
         double const n = std::clamp(std::floor(trials * p + z * std::sqrt(trials * p * (1.0 - p))), 0.0, trials);
         auto const instrument = sy::binomial_count(static_cast<std::uint64_t>(trials));
-        mp const choose = mp(lgamma(mp(trials + 1))) - mp(lgamma(mp(n + 1))) - mp(lgamma(mp(trials - n + 1)));
+        mp const choose = log_gamma(mp(trials + 1)) - log_gamma(mp(n + 1)) - log_gamma(mp(trials - n + 1));
         binomial.add(instrument.score(n, p), choose + mp(n) * log(mp(p)) + mp(trials - n) * log(1 - mp(p)), trials, p,
                      n);
         if (n < trials && trials < 1e8)
@@ -274,7 +279,7 @@ TEST_CASE("counts: probabilities from one count to a thousand million, tails") {
         double const n = std::max(0.0, std::floor(mean + z * std::sqrt(mean + mean * mean / size)));
         auto const instrument = sy::negative_binomial_count(size);
         mp const s = size, m = mean, p = s / (s + m), q = m / (s + m);
-        mp const choose = mp(lgamma(mp(s + n))) - mp(lgamma(mp(n + 1))) - mp(lgamma(s));
+        mp const choose = log_gamma(mp(s + n)) - log_gamma(mp(n + 1)) - log_gamma(s);
         scattered.add(instrument.score(n, mean), choose + s * log(p) + mp(n) * log(q), size, mean, n);
         scattered_tails.add(instrument.score(sy::over(n), mean), log(beta_below(n + 1, s, q)), size, mean, n);
       }
