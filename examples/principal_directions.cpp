@@ -4,10 +4,11 @@
 // All invented.
 #include <steelyard/steelyard.hpp>
 
+#include <algorithm>
 #include <array>
 #include <cmath>
 #include <cstddef>
-#include <iostream>
+#include <cstdio>
 
 namespace sy = steelyard;
 using levels = std::array<double, 3>;
@@ -40,26 +41,36 @@ matrix principal_directions(matrix& a) {
 int main() {
   auto const middle = sy::reading(
       "middle borehole", 13.1, [](levels const& h) { return h[1]; }, sy::normal_noise(0.1));
-  sy::pipeline const pipe{aquifer, middle};
-  auto const itself = [](levels const& h) { return h; };
-  auto const covariance = pipe.covariance({.size = 200'000, .seed = 11, .threads = 2}, itself);
+  auto const sample = sy::pipeline{aquifer, middle}.run({.size = 200'000, .seed = 11, .threads = 2});
+  auto const covariance = sample.covariance([](levels const& h) { return h; });
 
   // A linear model with normal errors: the exact posterior covariance is C - c c^T / (C_11 + 0.1^2), c the middle
   // column of C.
   bool ok = true;
-  matrix found{};
+  matrix exact{}, found{};
   for (std::size_t i = 0; i < 3; ++i)
     for (std::size_t j = 0; j < 3; ++j) {
       double const prior =
           2.25 + 0.64 * (static_cast<double>(i) - 1.0) * (static_cast<double>(j) - 1.0) + (i == j ? 0.09 : 0.0);
-      double const ci = i == 1 ? 2.34 : 2.25, cj = j == 1 ? 2.34 : 2.25, exact = prior - ci * cj / (2.34 + 0.01);
+      double const ci = i == 1 ? 2.34 : 2.25, cj = j == 1 ? 2.34 : 2.25;
+      exact[i][j] = prior - ci * cj / (2.34 + 0.01);
       found[i][j] = covariance(i, j).value;
-      ok = ok && std::abs(found[i][j] - exact) < 5.0 * covariance(i, j).standard_error;
+      ok = ok && std::abs(found[i][j] - exact[i][j]) < 5.0 * covariance(i, j).standard_error;
     }
   matrix const directions = principal_directions(found);
-  for (std::size_t k = 0; k < 3; ++k) {
-    std::cout << "along (" << directions[0][k] << ", " << directions[1][k] << ", " << directions[2][k]
-              << ") the levels are known to " << std::sqrt(found[k][k]) << " m\n";
+  std::array<std::size_t, 3> order{0, 1, 2};  // the best known first
+  std::sort(order.begin(), order.end(), [&](std::size_t a, std::size_t b) { return found[a][a] < found[b][b]; });
+  std::printf("Spread of the levels along each direction (west, middle, east), before and after the reading\n");
+  for (std::size_t const k : order) {
+    levels const v{directions[0][k], directions[1][k], directions[2][k]};
+    auto const along = [v](levels const& h) { return v[0] * h[0] + v[1] * h[1] + v[2] * h[2]; };
+    sy::estimate const before = sample.before().moments(along).sd, after = sample.moments(along).sd;
+    std::printf("  (%5.2f, %5.2f, %5.2f)\n      before  %s m\n      after   %s m\n", v[0], v[1], v[2], to_string(before).c_str(),
+                to_string(after).c_str());
+    double variance = 0.0;
+    for (std::size_t i = 0; i < 3; ++i)
+      for (std::size_t j = 0; j < 3; ++j) variance += v[i] * exact[i][j] * v[j];
+    ok = ok && std::abs(after.value - std::sqrt(variance)) < 5.0 * after.standard_error;
     for (std::size_t i = 0; i < 3; ++i) ok = ok && (i == k || std::abs(found[i][k]) < 1e-9);
   }
   return ok ? 0 : 1;
