@@ -4,6 +4,7 @@
 #include <steelyard/base/bin_lanes.hpp>
 #include <steelyard/base/kernels.hpp>
 #include <steelyard/base/moment_lanes.hpp>
+#include <steelyard/base/monomial_lanes.hpp>
 
 #include <boost/multiprecision/cpp_bin_float.hpp>
 
@@ -278,6 +279,30 @@ TEST_CASE("sums for error bars are the sums they are named after") {
     CHECK(same_bits(parted, parted_want));
     CHECK(same_bits(spread, spread_want));
   }
+}
+
+TEST_CASE("sums of powers and products have the same bits at every width, and are what they are named after") {
+  std::size_t const groups = 21, n = groups * sy::virtual_lanes;
+  even u;
+  std::vector<double> x(n), y(n), w(n);
+  for (std::size_t i = 0; i < n; ++i) x[i] = 2.0 * u() - 1.0, y[i] = 2.0 * u() - 1.0, w[i] = u();
+  double plain[15 * 8] = {}, of_one[5 * 8] = {};
+  sy::sum_monomials<2, 4>(x.data(), y.data(), w.data(), groups, plain, sy::isa::plain);
+  sy::sum_monomials<1, 4>(x.data(), x.data(), w.data(), groups, of_one, sy::isa::plain);
+  for (sy::isa const width : widths()) {
+    double two[15 * 8] = {}, one[5 * 8] = {};
+    sy::sum_monomials<2, 4>(x.data(), y.data(), w.data(), groups, two, width);
+    sy::sum_monomials<1, 4>(x.data(), x.data(), w.data(), groups, one, width);
+    CHECK(same_bits(two, plain));
+    CHECK(same_bits(one, of_one));
+  }
+  for (std::size_t a = 0; a <= 4; ++a)
+    for (std::size_t b = 0; a + b <= 4; ++b) {
+      double want = 0.0;
+      for (std::size_t i = 0; i < n; ++i) want += w[i] * std::pow(x[i], static_cast<double>(a)) * std::pow(y[i], static_cast<double>(b));
+      CHECK(std::abs(sy::lane_total(plain + 8 * ((a + b) * (a + b + 1) / 2 + b)) - want) < 1e-12);
+      if (b == 0) CHECK(std::abs(sy::lane_total(of_one + 8 * a) - want) < 1e-12);
+    }
 }
 
 TEST_CASE("the total of values has the same bits at every width, and is right") {

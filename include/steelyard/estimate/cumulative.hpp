@@ -105,6 +105,15 @@ class cumulative_points_estimator {
   [[nodiscard]] cumulative_points_estimator fresh() const { return {readout_, points_}; }
 
   void add(std::span<double const> values, std::span<double const> weights, weighted_view const& view) {
+    if (view.groups.empty() && view.counts.empty() && points_.size() <= 32) {
+      detail::add_to_cells(cells_, weights, [&](std::size_t first, std::size_t n, std::uint64_t* cells) {
+        double const* const x = values.data() + first;
+        std::fill(cells, cells + n, std::uint64_t{0});
+        for (double const point : points_)  // without branches, which could not be foretold
+          for (std::size_t i = 0; i < n; ++i) cells[i] += point < x[i] ? 1u : 0u;
+      });
+      return;
+    }
     detail::grouped_cells block;
     for (std::size_t i = 0; i < weights.size(); ++i) {
       auto const cell =

@@ -12,6 +12,8 @@
 
 #include <steelyard/base/algorithm.hpp>
 #include <steelyard/base/bits.hpp>
+#include <steelyard/base/kernels.hpp>
+#include <steelyard/base/monomial_lanes.hpp>
 #include <steelyard/estimate/estimate.hpp>
 #include <steelyard/estimate/group_sums.hpp>
 #include <steelyard/estimate/run_facts.hpp>
@@ -70,24 +72,15 @@ class moment_sums {
         for (std::size_t i = 0; i < n; ++i) reach = std::max(reach, std::abs(f[v][i] - sums.centre[v]));
         sums.scale[v] = power_above(reach);
       }
-      for (std::size_t i = 0; i < n; ++i) {
-        double power[Vars][4 * Degree + 1];
-        for (std::size_t v = 0; v < Vars; ++v) {
-          double const t = sums.scale[v] > 0.0 ? (f[v][i] - sums.centre[v]) / sums.scale[v] : 0.0;
-          power[v][0] = 1.0;
-          for (std::size_t p = 1; p <= 4 * Degree; ++p) power[v][p] = power[v][p - 1] * t;
-        }
-        double const w = view.weights[i], mw = view.count(i) * w, w2 = mw * w, w4 = w2 * (w * w);
-        auto const take = [&](double* to, double factor, std::size_t degree) {
-          shape::each(degree, [&](std::size_t a, std::size_t b) {
-            to[shape::place(a, b)] += factor * (Vars == 1 ? power[0][a] : power[0][a] * power[Vars - 1][b]);
-          });
-        };
-        take(sums.first.data(), mw, Degree);
-        take(sums.second.data(), w2, 2 * Degree);
-        take(sums.fourth.data(), w4, 4 * Degree);
-        if (!of_entry.empty()) take(of_entry[i].data() + k * terms_count, mw, Degree);
-      }
+      add_powers_of(sums, view, f, [&](std::size_t i, double const(&t)[Vars], double mw) {
+        if (of_entry.empty()) return;
+        shape::each(Degree, [&](std::size_t a, std::size_t b) {
+          double term = mw;
+          for (std::size_t p = 0; p < a; ++p) term *= t[0];
+          for (std::size_t p = 0; p < b; ++p) term *= t[Vars - 1];
+          of_entry[i][k * terms_count + shape::place(a, b)] = term;
+        });
+      });
     }
     for (std::size_t i = 0; i < of_entry.size(); ++i) block.groups_.push(view.groups[i], of_entry[i]);
     block.groups_.settle();
@@ -179,6 +172,39 @@ class moment_sums {
     std::array<double, shape::count(2 * Degree)> second{};
     std::array<double, shape::count(4 * Degree)> fourth{};
   };
+
+  /// The sums of one set over its entries, about its centre; each(i, t, m w) is called for every entry.
+  template <class Each>
+  static void add_powers_of(power_sums& sums, weighted_view const& view, columns const& f, Each each) {
+    constexpr std::size_t run = 128, eights = shape::count(Degree) + shape::count(2 * Degree) + shape::count(4 * Degree);
+    double t[Vars][run], of_first[run], of_second[run], of_fourth[run], lanes[eights * virtual_lanes] = {};
+    double* const second = lanes + shape::count(Degree) * virtual_lanes;
+    double* const fourth = second + shape::count(2 * Degree) * virtual_lanes;
+    double per_scale[Vars];
+    for (std::size_t v = 0; v < Vars; ++v) per_scale[v] = sums.scale[v] > 0.0 ? 2.0 / sums.scale[v] : 0.0;
+    for (std::size_t first = 0; first < view.weights.size(); first += run) {
+      std::size_t const n = std::min(run, view.weights.size() - first), groups = (n + virtual_lanes - 1) / virtual_lanes;
+      for (std::size_t i = n; i < groups * virtual_lanes; ++i) {
+        for (std::size_t v = 0; v < Vars; ++v) t[v][i] = 0.0;
+        of_first[i] = of_second[i] = of_fourth[i] = 0.0;
+      }
+      for (std::size_t i = 0; i < n; ++i) {
+        double of_one[Vars];
+        for (std::size_t v = 0; v < Vars; ++v) of_one[v] = t[v][i] = times(0.5 * (f[v][first + i] - sums.centre[v]), per_scale[v]);
+        double const w = view.weights[first + i], mw = view.count(first + i) * w;
+        of_first[i] = mw;
+        of_second[i] = mw * w;
+        of_fourth[i] = mw * w * (w * w);
+        each(first + i, of_one, mw);
+      }
+      sum_monomials<Vars, Degree>(t[0], t[Vars - 1], of_first, groups, lanes);
+      sum_monomials<Vars, 2 * Degree>(t[0], t[Vars - 1], of_second, groups, second);
+      sum_monomials<Vars, 4 * Degree>(t[0], t[Vars - 1], of_fourth, groups, fourth);
+    }
+    for (std::size_t p = 0; p < sums.first.size(); ++p) sums.first[p] = lane_total(lanes + p * virtual_lanes);
+    for (std::size_t p = 0; p < sums.second.size(); ++p) sums.second[p] = lane_total(second + p * virtual_lanes);
+    for (std::size_t p = 0; p < sums.fourth.size(); ++p) sums.fourth[p] = lane_total(fourth + p * virtual_lanes);
+  }
 
   [[nodiscard]] bool empty() const noexcept {
     return sets_[0].first[0] == 0.0 && sets_[0].second[0] == 0.0 && groups_.empty();
