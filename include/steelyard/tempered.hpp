@@ -4,4 +4,5 @@
 // Sharp readings and low probabilities: the same black box, far fewer runs.
 
 #include <steelyard/core.hpp>
+#include <steelyard/harder/low_probability.hpp>
 #include <steelyard/harder/run_tempered.hpp>

@@ -38,12 +38,13 @@ class ladder {
   ladder(ladder_terms terms, executor execute, worker_pool<Worker>& pool)
       : terms_(std::move(terms)), execute_(std::move(execute)), pool_(pool) {}
 
-  /// Forgets all particles and settings, not the calls they cost: the next draws are those of another seed.
+  /// Forgets all particles and settings, but neither the calls they cost nor whether chains were mixed: the next draws
+  /// are those of another seed.
   void begin_again(std::uint64_t seed) {
     terms_.seed = seed;
     all_ = {};
     settings_ = {};
-    rung_ = failed_ = unmixed_ = 0;
+    rung_ = failed_ = 0;
   }
 
   /// Draws from the prior; draw i is lineage i. Some are played again, out of step.

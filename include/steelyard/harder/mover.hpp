@@ -75,7 +75,7 @@ class mover {
   /// One proposal; true where the chain went there.
   bool take_step(trail<state>& chain, chain_task const& task, std::uint64_t step, rung_settings const& how, std::vector<arm_tally>& tallies) {
     draws_access::seat(source_, task.seed, task.chain, purpose::move, step_round(task.rung, step));
-    std::size_t const of = how.class_of(chain.at.words.size());
+    std::size_t const of = how.class_of(chain.at.used);
     word_class const& cls = how.classes[of];
     normal_fit const& fit = cls.fits[chain.lineage & 1u];
     std::size_t const which = choose(cls.uses, source_.uniform());
@@ -129,7 +129,7 @@ class mover {
 
   template <std::size_t... I>
   bool draw_exactly(arm const& by, trail<state>& chain, chain_task const& task, double power, std::index_sequence<I...>) {
-    if (chain.at.words.size() < by.last) return false;
+    if (chain.at.used < by.last) return false;
     next_.words = chain.at.words;
     next_.deviates.clear();
     next_.log_ratio = 0.0;
@@ -184,6 +184,7 @@ class mover {
     }
     for (std::size_t i = before; i < size; ++i) at.deviates[i] = normal_from_word(next_.words[i]);
     std::swap(at.words, next_.words);
+    at.used = size;
     at.standard_known = fitted && size >= k;
     if (at.standard_known) {
       std::swap(at.standard, next_.standard);

@@ -37,12 +37,14 @@ struct arm {
 /// A chain's place: the words its state used, and what is known of them.
 struct chain_place {
   std::vector<std::uint64_t> words;
+  std::size_t used = 0;           ///< by the state: words past them are free, and tell nothing of its class
   std::vector<double> deviates;   ///< normal deviates of the words
   std::vector<double> standard;   ///< the same standardised by a fit,
   double standard_squares = 0.0;  ///< the sum of their squares,
   bool standard_known = false;    ///< and whether the two hold
 
   void find_deviates() {
+    used = words.size();
     deviates.resize(words.size());
     for (std::size_t i = 0; i < words.size(); ++i) deviates[i] = normal_from_word(words[i]);
     standard_known = false;
