@@ -20,6 +20,9 @@ set(bits results.cpp)
 set(slips
     bounded_bare_double
     draws_copied_inside
+    histogram_without_bins
+    own_estimator_fields
+    per_worker_without_factory
     pipeline_bare_double
     pipeline_mutable_sampler
     pipeline_mutable_weighter
@@ -31,9 +34,18 @@ set(slips
     reading_of_another_state
     reweigh_bare_double
     sample_estimate_of_a_readout
+    sample_given_a_number
     sample_probability_of_a_number
     sample_readout_of_another_state
     together_bare_double
+    toolbox_correlation_of_text
+    toolbox_cumulative_in_one_pass
+    toolbox_ensemble_event
+    toolbox_histogram_2d_edges
+    toolbox_mode_of_text
+    toolbox_moments_of_two
+    toolbox_shortest_in_one_pass
+    until_of_a_readout
     weigh_bare_double)
 
 set(faults "")

@@ -7,6 +7,7 @@
 #include <memory>
 #include <span>
 #include <string>
+#include <type_traits>
 #include <utility>
 #include <vector>
 
@@ -127,6 +128,13 @@ struct automatic_bins_t {};
 /// In two dimensions the power is -1/4. The result records the edges and how they were chosen.
 ///   [Freedman & Diaconis, Z. Wahrscheinlichkeitstheorie 57, 1981, 453; Scott, Multivariate Density Estimation, 1992, ch. 3]
 inline constexpr automatic_bins_t automatic_bins{};
+
+namespace detail {
+
+template <class Edges>
+inline constexpr bool are_edges_v = std::is_convertible_v<Edges, bins> || std::is_same_v<Edges, automatic_bins_t>;
+
+}  // namespace detail
 
 namespace detail {
 

@@ -7,6 +7,7 @@
 #include <tuple>
 #include <type_traits>
 #include <utility>
+#include <vector>
 
 #include <steelyard/estimate/run_facts.hpp>
 #include <steelyard/weigh/concepts.hpp>
@@ -90,6 +91,15 @@ struct columns_of<std::tuple<Rs...>, State> {
 /// True where every readout of the estimator can read this kind of state.
 template <class E, class State>
 inline constexpr bool reads_v = columns_of<readouts_t<E>, State>::valid;
+
+template <class Field>
+inline constexpr bool is_plain_field_v = std::is_trivially_copyable_v<Field>;
+template <class T>
+inline constexpr bool is_plain_field_v<std::vector<T>> = std::is_trivially_copyable_v<T>;
+template <class Fields>
+inline constexpr bool are_plain_fields_v = false;
+template <class... Fields>
+inline constexpr bool are_plain_fields_v<std::tuple<Fields&...>> = (is_plain_field_v<Fields> && ...);
 
 /// The estimator as the engine runs it on this kind of state: some learn here
 /// how many columns their readout has.

@@ -104,5 +104,12 @@ template <class Readout>
 [[nodiscard]] auto histogram(Readout readout, automatic_bins_t = automatic_bins) {
   return histogram_estimator<Readout>(std::move(readout), std::nullopt);
 }
+template <class Readout, class Edges>
+  requires(!detail::are_edges_v<Edges>)
+[[nodiscard]] auto histogram(Readout readout, Edges const&) {
+  static_assert(detail::are_edges_v<Edges>,
+                "steelyard: a histogram takes bins: equal_bins(lower, upper, n), log_bins, bins{edges} or automatic_bins");
+  return histogram_estimator<Readout>(std::move(readout), std::nullopt);
+}
 
 }  // namespace steelyard::inline v1

@@ -104,8 +104,6 @@ namespace detail {
 
 inline std::optional<bins> given_edges(bins edges) { return edges; }
 inline std::optional<bins> given_edges(automatic_bins_t) { return std::nullopt; }
-template <class Edges>
-inline constexpr bool are_edges_v = std::is_convertible_v<Edges, bins> || std::is_same_v<Edges, automatic_bins_t>;
 
 }  // namespace detail
 

@@ -13,8 +13,12 @@ consteval bool may_draw() {
     static_assert(!Speak || !changes,
                   "steelyard: this sampler changes itself when called; samplers are called as const, perhaps from "
                   "several threads: wrap it as sy::per_worker([] { return sampler; })");
-    static_assert(!Speak || changes, "steelyard: a sampler is called with draws&, never with a copy of it "
-                                     "(`[](sy::draws& draws) { ... }`), and returns a state; this one cannot be called so");
+    static_assert(!Speak || !makes_nothing_v<Sampler>,
+                  "steelyard: per_worker() takes a factory without arguments that returns the callable: "
+                  "sy::per_worker([] { return sampler; })");
+    static_assert(!Speak || changes || makes_nothing_v<Sampler>,
+                  "steelyard: a sampler is called with draws&, never with a copy of it (`[](sy::draws& draws) { ... }`), "
+                  "and returns a state; this one cannot be called so");
     return false;
   } else if constexpr (!sampler<Sampler>) {
     static_assert(!Speak || sampler<Sampler>, "steelyard: this sampler returns nothing, or nothing that can be moved, or a "

@@ -99,7 +99,7 @@ class pipeline {
   }
   template <class Readout, class Edges = automatic_bins_t>
   auto histogram(plan const& how, Readout readout, Edges edges = {}) const {
-    return one(how, steelyard::histogram(std::move(readout), std::move(edges)));
+    return one<histogram_result>(how, steelyard::histogram(std::move(readout), std::move(edges)));
   }
   template <class First, class Second>
   auto difference(plan const& how, First first, Second second) const {
@@ -112,7 +112,7 @@ class pipeline {
   auto log_evidence(plan const& how) const { return one(how, steelyard::log_evidence()); }
   template <class Readout>
   auto moments(plan const& how, Readout readout) const {
-    return one(how, steelyard::moments(std::move(readout)));
+    return one<moments_result>(how, steelyard::moments(std::move(readout)));
   }
   template <class First, class Second>
   auto correlation(plan const& how, First first, Second second) const {
@@ -235,13 +235,13 @@ class pipeline {
     return part;
   }
 
-  template <class E>
+  template <class IfRefused = steelyard::estimate, class E>
   auto one(plan const& how, E const& question) const {
     constexpr bool fine = fits && detail::may_ask<true, E, state_type, true>();
     if constexpr (fine)
       return pass(how, std::tuple<detail::bound_t<E, state_type>>(detail::for_state<state_type>(question))).template get<0>();
     else
-      return detail::refused<steelyard::estimate>();
+      return detail::refused<IfRefused>();
   }
 
   template <class... Es>

@@ -2,6 +2,7 @@
 #pragma once
 
 #include <type_traits>
+#include <utility>
 
 #include <steelyard/estimate/answers.hpp>
 #include <steelyard/estimate/estimate.hpp>
@@ -33,6 +34,10 @@ consteval bool may_ask() {
   } else if constexpr (OnePass && takes_everything<E>) {
     static_assert(!Speak || !takes_everything<E>,
                   "steelyard: this question needs all values at once: keep the sample with run() and ask it there");
+    return false;
+  } else if constexpr (OnePass && !are_plain_fields_v<decltype(E::fields(std::declval<E&>()))>) {
+    static_assert(!Speak, "steelyard: fields() of this estimator may name numbers, and std::arrays and std::vectors of them, "
+                          "as std::tie(...): a run writes them to its checkpoints");
     return false;
   } else if constexpr (requires { E::asks_an_event; }) {
     constexpr bool event = event_for<std::remove_cvref_t<decltype(std::declval<E const&>().readout())>, X>;

@@ -125,8 +125,9 @@ class weighted_sample {
   /// and the evidence that of the reading given the event.
   template <class Event>
   weighted_sample given(Event const& event) const {
-    static_assert(event_for<Event, X>, "steelyard: given() takes an event: a readout that returns bool");
-    if constexpr (event_for<Event, X>) {
+    constexpr bool fine = event_for<Event, X>;
+    static_assert(fine, "steelyard: given() takes an event: a readout that returns bool");
+    if constexpr (fine) {
       auto const held = values_of(*this, event, true);
       return with_columns(detail::given_event(*columns_, held), "given");
     } else {
@@ -154,17 +155,17 @@ class weighted_sample {
   }
   template <class Readout, class Edges = automatic_bins_t>
   auto histogram(Readout readout, Edges edges = {}) const {
-    return one(steelyard::histogram(std::move(readout), std::move(edges)));
+    return one<histogram_result>(steelyard::histogram(std::move(readout), std::move(edges)));
   }
   /// inf{x : F(x) >= p}.
   template <class Readout>
   auto quantile(Readout readout, double p) const {
-    return one(steelyard::quantile(std::move(readout), p));
+    return one<quantile_result>(steelyard::quantile(std::move(readout), p));
   }
   /// Equal-tailed coverage interval of the quantity itself.
   template <class Readout>
   auto interval(Readout readout, double level) const {
-    return one(steelyard::coverage_interval(std::move(readout), level));
+    return one<interval_result>(steelyard::coverage_interval(std::move(readout), level));
   }
   template <class First, class Second>
   auto difference(First first, Second second) const {
@@ -178,7 +179,7 @@ class weighted_sample {
   /// Mean, sd, skewness and kurtosis.
   template <class Readout>
   auto moments(Readout readout) const {
-    return one(steelyard::moments(std::move(readout)));
+    return one<moments_result>(steelyard::moments(std::move(readout)));
   }
   template <class First, class Second>
   auto correlation(First first, Second second) const {
@@ -277,13 +278,13 @@ class weighted_sample {
     return std::make_unique<detail::worker_pool<worker>>(
         [this, &bound] { return std::make_unique<worker>(*states_, *columns_, *origin_, bound); });
   }
-  template <class E>
+  template <class IfRefused = steelyard::estimate, class E>
   auto one(E const& question) const {
     constexpr bool fine = detail::may_ask<true, E, X, false>();
     if constexpr (fine)
       return ask(std::tuple<detail::bound_t<E, X>>(detail::for_state<X>(question))).template get<0>();
     else
-      return detail::refused<steelyard::estimate>();
+      return detail::refused<IfRefused>();
   }
   template <class... Es>
   auto ask(std::tuple<Es...> const& bound) const {

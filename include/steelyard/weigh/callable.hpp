@@ -76,10 +76,24 @@ class per_worker {
  public:
   explicit per_worker(Factory factory) : factory_(std::move(factory)) {}
 
-  [[nodiscard]] auto worker_instance() const { return detail::own_copy(factory_()); }
+  [[nodiscard]] auto worker_instance() const
+    requires std::is_invocable_v<Factory const&>
+  {
+    return detail::own_copy(factory_());
+  }
 
  private:
   Factory factory_;
 };
+
+namespace detail {
+
+/// A callable handed to `per_worker` where a factory that returns it is due.
+template <class F>
+inline constexpr bool makes_nothing_v = false;
+template <class Factory>
+inline constexpr bool makes_nothing_v<per_worker<Factory>> = !std::is_invocable_v<Factory const&>;
+
+}  // namespace detail
 
 }  // namespace steelyard::inline v1

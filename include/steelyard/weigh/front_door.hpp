@@ -63,7 +63,9 @@ consteval bool may_weigh() {
     static_assert(!Speak || !changes, "steelyard: this weighter changes itself when called; weighters are called as const, "
                                       "perhaps from several threads: wrap it as sy::per_worker([] { return weighter; })");
     static_assert(!Speak || !elsewhere, "steelyard: the readout of this reading cannot read this state");
-    static_assert(!Speak || bare || changes || elsewhere,
+    static_assert(!Speak || !makes_nothing_v<W>, "steelyard: per_worker() takes a factory without arguments that returns the "
+                                                 "callable: sy::per_worker([] { return weighter; })");
+    static_assert(!Speak || bare || changes || elsewhere || makes_nothing_v<W>,
                   "steelyard: this weighter cannot weigh these states: it is called as const with one state and returns "
                   "log_likelihood or likelihood");
     return false;
