@@ -6,3 +6,4 @@
 #include <steelyard/core.hpp>
 #include <steelyard/harder/low_probability.hpp>
 #include <steelyard/harder/run_tempered.hpp>
+#include <steelyard/harder/run_until_sound.hpp>
