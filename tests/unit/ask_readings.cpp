@@ -1,11 +1,15 @@
 // SPDX-License-Identifier: BSL-1.0
-// Questions to readings, against conjugate models. Normal and negative binomial tails: Boost.Math.
+// Questions to readings, against conjugate models. Normal, negative binomial and chi-square tails: Boost.Math.
 // legs: plain
 #include <doctest/doctest.h>
 
+#include <algorithm>
+#include <array>
 #include <cmath>
+#include <cstddef>
 #include <string>
 
+#include <boost/math/distributions/chi_squared.hpp>
 #include <boost/math/distributions/negative_binomial.hpp>
 #include <boost/math/distributions/normal.hpp>
 
@@ -65,7 +69,7 @@ TEST_CASE("the error of that difference is right from both sides") {
   double sum = 0.0;
   int const repeats = 1000;
   for (int r = 1; r <= repeats; ++r) {
-    auto const moved = sy::decided(sy::pipeline{prior, weighter}.run({.size = 1'000, .seed = r}), itself)[0].moved;
+    auto const moved = sy::decided(sy::pipeline{prior, weighter}.run({.size = 500, .seed = r}), itself)[0].moved;
     sum += std::pow((moved.value - exact) / moved.standard_error, 2) / repeats;
   }
   CHECK(sum == doctest::Approx(1.0).epsilon(5.0 * std::sqrt(2.0 / repeats)));  // mean z^2 has variance about 2/n
@@ -103,15 +107,43 @@ TEST_CASE("counts are randomised between the tails below and up to the count") {
 TEST_CASE("a censored reading has the chance of what it says, and a rounded one counts its own step as a tie") {
   auto const weighter = sy::together(sy::reading("over", sy::over(1.0), itself, sy::normal_noise(0.5)),
                                      sy::reading("rounded", 0.5, itself, sy::rounded(0.5, sy::normal_noise(0.5))));
-  auto const sample = sy::pipeline{prior, weighter}.run({.size = 200'000, .seed = 1});
+  auto const sample = sy::pipeline{prior, weighter}.run({.size = 50'000, .seed = 1});
   auto const agreed = sy::agree(sample, weighter);
   auto const without_over = sample.without("over");
   boost::math::normal_distribution<double> const unit;
   sy::estimate const by_hand =
       without_over.expectation([&](double x) { return cdf(complement(unit, (1.0 - x) / 0.5)); });
   CHECK(agreed[0].chance.value == doctest::Approx(by_hand.value).epsilon(1e-9));
-  CHECK(agreed[1].chance.value > 0.0);
-  CHECK(agreed[1].chance.value <= 1.0 + 1e-12);
+  // Half the chance, or what it lacks of 1, lies between the tail below the step and that with the step in it.
+  auto const without_rounded = sample.without("rounded");
+  auto const below = [&](double edge) {
+    return without_rounded.expectation([&unit, edge](double x) { return cdf(unit, (edge - x) / 0.5); }).value;
+  };
+  double const half = 0.5 * agreed[1].chance.value, least = below(0.25), most = below(0.75);
+  CHECK(((half >= least && half <= most) || (1.0 - half >= least && 1.0 - half <= most)));
+}
+
+TEST_CASE("where simulator and instruments are right, the chances of counts and rounded readings are spread evenly") {
+  std::size_t const repeats = 300;
+  std::array<std::array<double, 5>, 2> seen{};
+  auto const start = [](sy::draws& d) { return d.uniform(1.0, 5.0); };
+  auto const gauge = sy::rounded(0.5, sy::normal_noise(0.6));
+  for (std::size_t r = 0; r < repeats; ++r) {
+    sy::draws world(sy::count(r + 1), 0, sy::purpose::check);
+    double const truth = start(world);
+    auto const weighter = sy::together(sy::reading("pulses", sy::poisson_count().draw(truth, world), itself, sy::poisson_count()),
+                                       sy::reading("gauge", gauge.draw(truth, world), itself, gauge));
+    auto const agreed = sy::agree(sy::pipeline{start, weighter}.run({.size = 300, .seed = r + 1}), weighter, {.seed = r + 1});
+    for (std::size_t k = 0; k < 2; ++k)
+      ++seen[k][std::min<std::size_t>(static_cast<std::size_t>(5.0 * agreed[k].chance.value), 4)];
+  }
+  for (auto const& cells : seen) {
+    double chi_square = 0.0;
+    for (double const n : cells) chi_square += std::pow(n - 0.2 * repeats, 2) / (0.2 * repeats);
+    boost::math::chi_squared_distribution<double> const law(4.0);
+    CAPTURE(chi_square);
+    CHECK(cdf(complement(law, chi_square)) > 1e-6);
+  }
 }
 
 TEST_CASE("the next reading of an instrument has the predictive law") {
@@ -126,6 +158,8 @@ TEST_CASE("the next reading of an instrument has the predictive law") {
   CHECK(near(range.lower, quantile(shown, 0.05)));
   CHECK(near(range.upper, quantile(shown, 0.95)));
   CHECK(next.drawn() == sample.drawn());
+  auto const shares = next.histogram(itself, sy::bins({-3.0, 0.5, 1.0, 4.0}));
+  CHECK(near(shares.probability(1), cdf(shown, 1.0) - cdf(shown, 0.5)));
   // The same faked readings whatever the threads, and others from another seed.
   auto const threaded = sy::next_reading(sy::pipeline{prior, weighter}.run({.size = 100'000, .seed = 1, .threads = 2}), itself,
                                          sy::normal_noise(0.3));
