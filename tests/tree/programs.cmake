@@ -31,6 +31,7 @@ set(slips
     pipeline_sampler_without_draws
     pipeline_void_sampler
     pipeline_weighter_of_another_state
+    reading_of_a_whole_state
     reading_of_another_state
     reweigh_bare_double
     sample_estimate_of_a_readout

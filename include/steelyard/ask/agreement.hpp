@@ -146,14 +146,16 @@ reading_agreement agreement_of(weighted_sample<X> const& sample, Reading const& 
 /// @param weighter  the `together` of readings that weighed the sample, or the one reading
 template <class X, class... Readings>
 agreement agree(weighted_sample<X> const& sample, together<Readings...> const& weighter, agreement_terms const& terms = {}) {
-  static_assert((detail::is_reading<Readings> && ...), "steelyard: agree() takes readings: sy::reading(name, value, readout, instrument)");
+  constexpr bool fine = (detail::is_reading<Readings> && ...);
+  static_assert(fine, "steelyard: agree() takes readings: sy::reading(name, value, readout, instrument)");
   std::vector<reading_agreement> all;
   std::size_t at = 0;
-  std::apply(
-      [&](auto const&... r) {
-        (all.push_back(detail::agreement_of(sample, r, std::string(r.name()), terms.seed, at++)), ...);
-      },
-      weighter.parts());
+  if constexpr (fine)
+    std::apply(
+        [&](auto const&... r) {
+          (all.push_back(detail::agreement_of(sample, r, std::string(r.name()), terms.seed, at++)), ...);
+        },
+        weighter.parts());
   return agreement(std::move(all), terms.hard_to_believe);
 }
 template <class X, class Value, class Readout, class Instrument>

@@ -24,14 +24,17 @@ struct reading_influence {
 /// @throws bad_argument where the sample has no named readings.
 template <class X, class Readout>
 std::vector<reading_influence> decided(weighted_sample<X> const& sample, Readout const& readout) {
-  static_assert(readout_for<Readout, X>, "steelyard: decided() takes a readout that returns one number");
+  constexpr bool fine = readout_columns<detail::result_t<Readout, X const&>>::size == 1;
+  static_assert(fine, "steelyard: decided() takes a readout of these states that returns one number");
   if (sample.names().empty()) throw bad_argument("decided: this sample has no readings left to take away");
   std::vector<reading_influence> all;
   for (std::string const& name : sample.names()) {
     weighted_sample<X> const without = sample.without(name);
-    std::vector<double> const values = without.values(readout);
-    all.push_back({name, detail::weighting_difference(sample, without, values), without.diagnosis().effective_size(),
-                   sample.diagnosis().effective_size()});
+    if constexpr (fine) {
+      std::vector<double> const values = without.values(readout);
+      all.push_back({name, detail::weighting_difference(sample, without, values), without.diagnosis().effective_size(),
+                     sample.diagnosis().effective_size()});
+    }
   }
   return all;
 }

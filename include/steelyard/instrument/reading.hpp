@@ -65,6 +65,10 @@ double size_of_reading(Value const& value) {
 ///         When called: bad_readout where the true value makes no sense for it.
 template <class Value, class Readout, class Instrument>
 class reading {
+  struct nothing {};
+  template <class State, class Found = detail::result_t<Readout, State const&>>
+  using truth_in = typename detail::truth_for<Instrument, std::conditional_t<std::is_void_v<Found>, nothing, Found>>::type;
+
  public:
   reading(std::string name, Value value, Readout where, Instrument instrument)
       : name_(std::move(name)), value_(std::move(value)), where_(std::move(where)), instrument_(std::move(instrument)) {
@@ -91,25 +95,20 @@ class reading {
   [[nodiscard]] Readout const& readout() const noexcept { return where_; }
   [[nodiscard]] Instrument const& instrument() const noexcept { return instrument_; }
 
+  /// Whether the instrument scores the value against what the readout finds in such a state.
+  template <class State>
+  static constexpr bool scores_state = requires(Instrument const& i, Value const& v, truth_in<State> const& t) {
+    { i.score(v, t) } -> std::same_as<log_likelihood>;
+  };
+
   /// Log-likelihood of the reading in this state.
   template <class State>
-    requires std::is_invocable_v<Readout const&, State const&>
+    requires std::is_invocable_v<Readout const&, State const&> && scores_state<State>
   log_likelihood operator()(State const& state) const {
-    using found = std::remove_cvref_t<std::invoke_result_t<Readout const&, State const&>>;
-    using truth = typename detail::truth_for<Instrument, found>::type;
-    constexpr bool fits = requires(Instrument const& i, Value const& v, truth const& t) {
-      { i.score(v, t) } -> std::same_as<log_likelihood>;
-    };
-    static_assert(fits, "steelyard: a reading's instrument cannot score its value against what its readout returns; "
-                        "see the instrument's documentation for the true value it takes");
-    if constexpr (fits) {
-      try {
-        return instrument_.score(value_, static_cast<truth>(detail::call(where_, state)));
-      } catch (bad_readout const& problem) {
-        throw bad_readout(prefix() + problem.what());
-      }
-    } else {
-      return log_likelihood{0.0};
+    try {
+      return instrument_.score(value_, static_cast<truth_in<State>>(detail::call(where_, state)));
+    } catch (bad_readout const& problem) {
+      throw bad_readout(prefix() + problem.what());
     }
   }
 

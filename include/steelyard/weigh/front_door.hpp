@@ -44,6 +44,16 @@ template <class W, class X>
 inline constexpr bool reads_elsewhere_v<W, X> =
     !callable_v<std::remove_cvref_t<decltype(std::declval<W const&>().readout())>, X const&>;
 
+/// A reading whose instrument takes another true value than the readout finds.
+template <class W, class X>
+inline constexpr bool scores_nothing_v = false;
+template <class W, class X>
+  requires requires(W const& weighter) {
+    weighter.readout();
+    W::template scores_state<X>;
+  }
+inline constexpr bool scores_nothing_v<W, X> = !reads_elsewhere_v<W, X> && !W::template scores_state<X>;
+
 /// Whether a weighter weighs states of type X. With `Speak`, one sentence says
 /// what is wrong.
 template <bool Speak, class Weighter, class X>
@@ -56,16 +66,18 @@ consteval bool may_weigh() {
     using W = typename to_blame<Weighter, X>::type;
     constexpr bool bare = std::is_convertible_v<result_t<W, X const&>, double>;
     constexpr bool changes = only_mutable_v<W, X const&>;
-    constexpr bool elsewhere = reads_elsewhere_v<W, X>;
+    constexpr bool elsewhere = reads_elsewhere_v<W, X>, nothing = scores_nothing_v<W, X>, made = !makes_nothing_v<W>;
     static_assert(!Speak || !bare, "steelyard: this weighter returns a bare number, which could be a density or its "
                                    "logarithm: return sy::log_likelihood{...} or sy::likelihood{...}, or wrap it as "
                                    "sy::as_log_likelihood(f) or sy::as_likelihood(f)");
     static_assert(!Speak || !changes, "steelyard: this weighter changes itself when called; weighters are called as const, "
                                       "perhaps from several threads: wrap it as sy::per_worker([] { return weighter; })");
     static_assert(!Speak || !elsewhere, "steelyard: the readout of this reading cannot read this state");
-    static_assert(!Speak || !makes_nothing_v<W>, "steelyard: per_worker() takes a factory without arguments that returns the "
-                                                 "callable: sy::per_worker([] { return weighter; })");
-    static_assert(!Speak || bare || changes || elsewhere || makes_nothing_v<W>,
+    static_assert(!Speak || !nothing, "steelyard: a reading's instrument cannot score its value against what its readout "
+                                      "returns; see the instrument's documentation for the true value it takes");
+    static_assert(!Speak || made, "steelyard: per_worker() takes a factory without arguments that returns the callable: "
+                                  "sy::per_worker([] { return weighter; })");
+    static_assert(!Speak || bare || changes || elsewhere || nothing || !made,
                   "steelyard: this weighter cannot weigh these states: it is called as const with one state and returns "
                   "log_likelihood or likelihood");
     return false;

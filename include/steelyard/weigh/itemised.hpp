@@ -71,7 +71,7 @@ void score_items(Instance const& weighter, State const& state, std::span<double>
   if constexpr (requires { weighter.scores(state, out); }) {
     weighter.scores(state, out);
     for (double& score : out) score = checked_log(score);
-  } else {
+  } else if constexpr (requires { to_log(detail::call(weighter, state)); }) {  // else a front door has spoken
     out[0] = to_log(detail::call(weighter, state));
   }
 }
