@@ -1,0 +1,77 @@
+# SPDX-License-Identifier: BSL-1.0
+# What the mooring example does with wrong files and wrong command lines: one line on standard error that names what is
+# wrong, nothing on standard output, an exit code above zero. Given: PROGRAM. Works in the current directory.
+cmake_policy(VERSION 3.22)
+set(cases 0)
+set(faults "")
+
+# refused(CODE WORDS ARGUMENT...): the program, with these arguments, says WORDS and returns CODE.
+function(refused code words)
+  execute_process(COMMAND "${PROGRAM}" ${ARGN} RESULT_VARIABLE returned OUTPUT_VARIABLE out ERROR_VARIABLE err)
+  math(EXPR cases "${cases} + 1")
+  set(cases ${cases} PARENT_SCOPE)
+  set(trouble "")
+  if(NOT returned STREQUAL code)
+    string(APPEND trouble " returned ${returned}, not ${code};")
+  endif()
+  if(NOT out STREQUAL "")
+    string(APPEND trouble " something on standard output;")
+  endif()
+  string(FIND "${err}" "${words}" found)
+  if(found EQUAL -1)
+    string(APPEND trouble " does not say it;")
+  endif()
+  string(REGEX MATCHALL "\n" ends "${err}")
+  list(LENGTH ends lines)
+  if(NOT lines EQUAL 1 OR NOT err MATCHES "^mooring: .*\n$")
+    string(APPEND trouble " not one line;")
+  endif()
+  if(trouble)
+    set(faults "${faults}\n  '${words}':${trouble} it said: ${err}" PARENT_SCOPE)
+  endif()
+endfunction()
+
+# wrong(WORDS TEXT): the same for a file that holds TEXT.
+function(wrong words text)
+  file(WRITE wrong.csv "${text}")
+  refused(1 "${words}" wrong.csv)
+  set(cases ${cases} PARENT_SCOPE)
+  set(faults "${faults}" PARENT_SCOPE)
+endfunction()
+
+set(header "occasion,wind_m_per_s,reading,unit\n")
+set(still "still air,0,163.4,kN\n")
+set(windy "steady wind,16,271.9,kN\n")
+
+wrong("wrong.csv: the file is empty" "")
+wrong("wrong.csv: there is a header but no row behind it" "${header}")
+wrong("wrong.csv: the column 'reading' is missing; there are 'occasion', 'wind_m_per_s', 'unit'"
+      "occasion,wind_m_per_s,unit\nstill air,0,kN\n")
+wrong("wrong.csv, line 2: 'slack' stands in column 'reading', where a number is due" "${header}still air,0,slack,kN\n${windy}")
+wrong("wrong.csv, line 3: 'nan' stands in column 'wind_m_per_s', where a number is due"
+      "${header}${still}steady wind,nan,271.9,kN\n")
+wrong("wrong.csv, line 2: fields in this row: 5, columns in the header: 4" "${header}still air,0,163,4,kN\n${windy}")
+wrong("wrong.csv, line 2: the load cell reads in kN, not in 't'" "${header}still air,0,16.34,t\n${windy}")
+wrong("wrong.csv, line 4: there is no occasion 'gale'" "${header}${still}${windy}gale,25,400,kN\n")
+wrong("wrong.csv, line 3: 'still air' was read already in line 2" "${header}${still}${still}${windy}")
+wrong("wrong.csv: there is no row for 'steady wind'" "${header}${still}")
+wrong("wrong.csv, line 3: a wind of 61 m/s is outside 0 to 40 m/s" "${header}${still}steady wind,61,271.9,kN\n")
+wrong("wrong.csv, line 2: a reading of -5 is off the scale of the load cell" "${header}still air,0,-5,kN\n${windy}")
+wrong("wrong.csv, line 3: the steady wind must be stronger than the wind in line 2" "${header}${still}steady wind,0,271.9,kN\n")
+# On the scale, but not of this barge.
+wrong("wrong.csv, line 2: no mooring comes within" "${header}still air,0,900,kN\n${windy}")
+
+refused(1 "nowhere.csv: there is no such file" nowhere.csv)
+refused(1 ": this is a folder, not a file" .)
+refused(2 "a file of readings is needed; --help shows")
+refused(2 "--seed takes a whole number from 0 to 18446744073709551615, not 'many'" wrong.csv --seed many)
+refused(2 "--threads takes a whole number from 0 to 4096, not ''" wrong.csv --threads)
+refused(2 "there is no option --chains;" wrong.csv --chains)
+refused(2 "two files of readings are given" wrong.csv wrong.csv)
+
+if(NOT cases EQUAL 21)
+  string(APPEND faults "\n  ${cases} cases were looked at, not 21")
+endif()
+if(faults)
+  message(FATAL_ERROR "mooring example:${faults}")
+endif()
