@@ -38,6 +38,8 @@ set(slips
     sample_given_a_number
     sample_probability_of_a_number
     sample_readout_of_another_state
+    tempered_bare_double
+    tempered_void_sampler
     together_bare_double
     toolbox_correlation_of_text
     toolbox_cumulative_in_one_pass

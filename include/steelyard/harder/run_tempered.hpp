@@ -31,6 +31,7 @@ namespace steelyard::inline v1 {
 /// Assumes  prior draws that see every mode: a narrow mode that none of them hints at is missed, and nothing can notice.
 /// Cost     about two thousand calls and chains x length a rung; memory of 8 bytes for each word of each state on a rung.
 template <class Sampler, class Weighter, class... Moves>
+  requires(detail::may_draw<false, Sampler>())
 auto run_tempered(pipeline<Sampler, Weighter> const& pipe, tempered_plan const& how, Moves const&... own) {
   static_assert((detail::is_own_move<Moves> && ...),
                 "steelyard: run_tempered() takes moves of your own as sy::refresh_together{first, size} or "
@@ -59,6 +60,13 @@ auto run_tempered(pipeline<Sampler, Weighter> const& pipe, tempered_plan const& 
   if (ended != nullptr) findings.push_back(detail::stopped_finding(climbing, ended));
   if (ended != nullptr) climbing.keep_all();
   return detail::sample_of_ladder(climbing, pipe.sampler(), pipe.weighter(), how.on_failure, std::move(findings));
+}
+
+/// A pipeline whose sampler was refused says no more here.
+template <class Sampler, class Weighter, class... Moves>
+  requires(!detail::may_draw<false, Sampler>())
+auto run_tempered(pipeline<Sampler, Weighter> const&, tempered_plan const&, Moves const&...) {
+  return detail::refused<weighted_sample<detail::no_state>>();
 }
 template <class Sampler, class Weighter>
 auto run_tempered(pipeline<Sampler, Weighter> const& pipe) {
