@@ -21,12 +21,6 @@ using namespace known;
 
 constexpr std::uint64_t seeds = 4'000;
 
-problem const& of(std::string const& name) {
-  for (problem const& p : problems())
-    if (p.name == name) return p;
-  throw std::runtime_error("there is no problem called " + name);
-}
-
 double by_student(double degrees) { return degrees / (degrees - 2.0); }
 
 }  // namespace

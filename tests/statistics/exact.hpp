@@ -128,4 +128,9 @@ inline posterior normal_given(double reading, double sd) {
                 log_normal_density(reading, 0.0, std::sqrt(1.0 + sd * sd)));
 }
 
+/// A standard normal prior under a score.
+inline posterior normal_under(std::function<double(double)> score, double low, double high, double log_factor = 0.0) {
+  return by_quadrature([=](double x) { return log_normal_density(x, 0.0, 1.0) + score(x) + log_factor; }, low, high);
+}
+
 }  // namespace known

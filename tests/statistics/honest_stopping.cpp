@@ -39,8 +39,10 @@ struct stopping {
 
 constexpr std::uint64_t most = 65'536;
 
-template <class Pipeline, class Question, class Target>
-std::function<stopped(std::uint64_t)> until_met(Pipeline pipe, Question question, Target target, double truth) {
+using pipeline_of_points = sy::pipeline<sampler_of_points, weighter_of_points>;
+
+template <class Question, class Target>
+std::function<stopped(std::uint64_t)> until_met(pipeline_of_points pipe, Question question, Target target, double truth) {
   return [=](std::uint64_t seed) {
     auto const answers = pipe.estimate({.size = most, .seed = seed}, sy::until(question, target));
     auto const& e = answers.template get<0>();
@@ -51,10 +53,10 @@ std::function<stopped(std::uint64_t)> until_met(Pipeline pipe, Question question
 std::vector<stopping> stoppings() {
   auto const x = &point::x;
   auto const above = [](double edge) { return sy::probability([edge](point const& p) { return p.x > edge; }); };
-  sy::pipeline const wide{normal_prior(0, 1), normal_reading(1, 1)};
-  sy::pipeline const sharp{normal_prior(0, 1), normal_reading(1, 0.1)};
-  sy::pipeline const skewed{lognormal_prior(0, 1), no_reading()};
-  sy::pipeline const heavy{gamma_prior(1, 1), scored([](double v) { return 0.3 * v; })};
+  pipeline_of_points const wide{normal_prior(0, 1), normal_reading(1, 1)};
+  pipeline_of_points const sharp{normal_prior(0, 1), normal_reading(1, 0.1)};
+  pipeline_of_points const skewed{lognormal_prior(0, 1), no_reading()};
+  pipeline_of_points const heavy{gamma_prior(1, 1), scored([](double v) { return 0.3 * v; })};
   posterior const of_wide = normal_given(1, 1), of_sharp = normal_given(1, 0.1);
   posterior const of_heavy = known_as(boost::math::gamma_distribution<double, quiet>(1, 1.0 / 0.7), -std::log(0.7));
   double const e1 = of_wide.quantile(0.99), e2 = of_sharp.quantile(0.98), third = std::sqrt(std::exp(1.0));

@@ -10,6 +10,7 @@
 #include <functional>
 #include <map>
 #include <optional>
+#include <type_traits>
 #include <utility>
 #include <vector>
 
@@ -29,29 +30,40 @@ struct point {
 
 struct source {
   std::function<sy::weighted_sample<point>(std::uint64_t seed, std::size_t size)> sample;
-  /// k states in one pass; empty where there is no pipeline.
+  /// k states in one pass; empty where no pipeline draws them, or one whose runs may fail.
   std::function<sy::ensemble<point>(std::uint64_t seed, std::size_t size, std::size_t k)> one_pass = {};
 };
 
-template <class Sampler, class Weighter>
-source piped(Sampler sampler, Weighter weighter) {
+// Functions are held behind one type each, so that a table of many problems costs the compiler a few pipelines.
+using sampler_of_points = std::function<point(sy::draws&)>;
+using weighter_of_points = std::function<sy::log_likelihood(point const&)>;
+
+template <class State, class Score>
+source piped_as(std::function<State(sy::draws&)> sampler, std::function<Score(point const&)> weighter) {
   auto const how = [](std::uint64_t seed, std::size_t size) {
     return sy::plan{.size = size, .seed = seed, .on_failure = sy::failures::set_aside};
   };
-  sy::pipeline pipe{sampler, weighter};
-  return {[=](std::uint64_t seed, std::size_t size) { return pipe.run(how(seed, size)); },
-          [=](std::uint64_t seed, std::size_t size, std::size_t k) { return pipe.resample(how(seed, size), k); }};
+  sy::pipeline pipe{std::move(sampler), std::move(weighter)};
+  source from{[=](std::uint64_t seed, std::size_t size) { return pipe.run(how(seed, size)); }};
+  if constexpr (std::is_same_v<State, point> && std::is_same_v<Score, sy::log_likelihood>)
+    from.one_pass = [=](std::uint64_t seed, std::size_t size, std::size_t k) { return pipe.resample(how(seed, size), k); };
+  return from;
+}
+template <class Sampler, class Weighter>
+source piped(Sampler sampler, Weighter weighter) {
+  return piped_as(std::function<std::invoke_result_t<Sampler&, sy::draws&>(sy::draws&)>(std::move(sampler)),
+                  std::function<std::invoke_result_t<Weighter&, point const&>(point const&)>(std::move(weighter)));
 }
 
 /// A sample that is drawn and then changed: reweighed, restricted, ...
-template <class Change>
-source changed(source from, Change change) {
+inline source changed(source from, std::function<sy::weighted_sample<point>(sy::weighted_sample<point> const&)> change) {
   return {[=](std::uint64_t seed, std::size_t size) { return change(from.sample(seed, size)); }};
 }
 
 /// An ensemble made elsewhere: `state(seed, i)`, and options that `describe(i, state, options)` fills.
-template <class State, class Describe, class Weighter>
-source weighed(State state, Describe describe, Weighter weighter) {
+inline source weighed(std::function<point(std::uint64_t seed, std::size_t i)> state,
+                      std::function<void(std::size_t i, point const&, sy::weigh_options&)> describe,
+                      weighter_of_points weighter) {
   return {[=](std::uint64_t seed, std::size_t size) {
     std::vector<point> states;
     sy::weigh_options options;
@@ -64,19 +76,22 @@ source weighed(State state, Describe describe, Weighter weighter) {
 }
 
 /// Prior weights: the ratio of two densities, times any constant.
-template <class Sampler, class Ratio, class Weighter>
-source with_prior_weights(Sampler sampler, Ratio ratio, Weighter weighter) {
+template <class Sampler, class Ratio>
+source with_prior_weights(Sampler sampler, Ratio ratio, weighter_of_points weighter) {
   return weighed(
       [=](std::uint64_t seed, std::size_t i) {
         sy::draws own(seed, i);
         return sampler(own);
       },
-      [=](std::size_t, point const& p, sy::weigh_options& options) { options.prior_weights.push_back(ratio(p)); }, weighter);
+      [=](std::size_t, point const& p, sy::weigh_options& options) { options.prior_weights.push_back(ratio(p)); },
+      std::move(weighter));
 }
 
+using group_of_state = std::function<std::size_t(std::size_t i)>;
+using group_member = std::function<point(sy::draws& common, sy::draws& own)>;
+
 /// State i belongs to group `group_of(i)`: `member(common, own)` draws from words that the group shares and from its own.
-template <class GroupOf, class Member, class Weighter>
-source grouped(GroupOf group_of, Member member, Weighter weighter) {
+inline source grouped(group_of_state group_of, group_member member, weighter_of_points weighter) {
   return weighed(
       [=](std::uint64_t seed, std::size_t i) {
         sy::draws common(seed, (std::uint64_t{1} << 40) + group_of(i)), own(seed, i);
@@ -85,12 +100,12 @@ source grouped(GroupOf group_of, Member member, Weighter weighter) {
       [=](std::size_t i, point const&, sy::weigh_options& options) {
         options.groups.push_back(static_cast<std::uint32_t>(7 * group_of(i) + 3));
       },
-      weighter);
+      std::move(weighter));
 }
 
 /// Whole numbers: equal states of one group are one state with a count, prior weights where a ratio is not 1.
-template <class GroupOf, class Member, class Ratio, class Weighter>
-source counted(GroupOf group_of, Member member, Ratio ratio, Weighter weighter) {
+inline source counted(group_of_state group_of, group_member member, std::function<double(point const&)> ratio,
+                      weighter_of_points weighter) {
   return {[=](std::uint64_t seed, std::size_t size) {
     std::map<std::pair<std::size_t, double>, std::uint64_t> seen;
     for (std::size_t i = 0; i < size; ++i) {
