@@ -4,9 +4,12 @@
 #include <algorithm>
 #include <atomic>
 #include <cstddef>
+#include <cstdint>
 #include <cstdlib>
 #include <malloc.h>
 #include <new>
+#include <utility>
+#include <vector>
 
 #include <steelyard/core.hpp>
 
@@ -66,8 +69,18 @@ void streams(benchmark::State& state) {
   std::size_t const n = bench::samples(1'000'000);
   bytes_a_sample(state, 16.0, n, 0.0, [&] { return sy::pipeline(draw, reading).run({.size = n, .keep = sy::keeping::streams}); });
 }
+void kept_grouped(benchmark::State& state) {
+  std::size_t const n = bench::samples(1'000'000);
+  bytes_a_sample(state, 20.0, n, sizeof(double), [&] {
+    std::vector<double> states(n);
+    std::vector<std::uint32_t> groups(n);
+    for (std::size_t i = 0; i < n; ++i) states[i] = static_cast<double>(i % 1000) * 1e-3, groups[i] = static_cast<std::uint32_t>(i % 50);
+    return sy::weigh(std::move(states), reading, {.groups = std::move(groups)});
+  });
+}
 BENCH_ROW(kept, "bytes a sample beside the states | states kept", 1);
 BENCH_ROW(kept_named, "bytes a sample beside the states | states kept, two named readings", 1);
+BENCH_ROW(kept_grouped, "bytes a sample beside the states | states kept, grouped", 1);
 BENCH_ROW(streams, "bytes a sample beside the states | streams kept", 1);
 
 void one_pass(benchmark::State& state, std::size_t n) {
