@@ -49,6 +49,15 @@ int main() {
     put("median", static_cast<sy::estimate const&>(sample.quantile(first, 0.5)));
     put("evidence", sample.log_evidence());
     put("ratio", sample.ratio(first, [](state const& x) { return 2.0 + x[1]; }));
+    auto const [spread, both, steps, middle] = sample.estimate(
+        sy::moments(first), sy::covariance([](state const& x) { return std::array{x[0], x[1]}; }), sy::cumulative(first, {0.0, 0.5}),
+        sy::coverage_interval(second, 0.9));
+    put("deviation", spread.sd);
+    put("kurtosis", spread.kurtosis);
+    put("entry", both(0, 1));
+    put("correlation", both.correlation(1, 0));
+    for (sy::estimate const& each : steps.shares) put("step", each);
+    put("lower", static_cast<sy::estimate const&>(middle.lower));
     put("size", sample.diagnosis().effective_size());
     put("perplexity", sample.diagnosis().perplexity());
     put("drawn again", sample.resample(400, {.seed = 2}).expectation(first));
