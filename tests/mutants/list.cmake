@@ -4,7 +4,7 @@
 # A name that begins with quick_ is tried in every run of the tests, the others with tests/run --honest.
 
 # --- estimators -------------------------------------------------------------------------------------------------------
-mutant(quick_last_bin_open estimate/bins.hpp unit/law_edges.cpp
+mutant(last_bin_open estimate/bins.hpp unit/law_edges.cpp
   "the last bin of a histogram is open on the right"
   [==[return x == e.back() ? n - 1 : n + 1;]==]
   [==[return n + 1;]==])
@@ -36,7 +36,7 @@ mutant(quick_never_seen_is_certain estimate/share_sums.hpp unit/law_verdict.cpp
   "an event that no sample met has standard error 0 and no limit"
   [==[if (!seen) return estimate::one_sided(false, facts);]==]
   [==[if (!seen) return estimate(0.0, terms, facts);]==])
-mutant(quick_linear_scale estimate/share_sums.hpp unit/law_verdict.cpp
+mutant(linear_scale estimate/share_sums.hpp unit/law_verdict.cpp
   "limits of a probability are symmetric on the plain scale"
   [==[return estimate(in / (in + out), terms, facts, error_scale::logit);]==]
   [==[return estimate(in / (in + out), terms, facts);]==])
@@ -44,11 +44,11 @@ mutant(quick_kish_as_verdict estimate/estimate.hpp unit/law_verdict.cpp
   "the sample-wide effective size decides on a readout's error bar"
   [==[bool const good = carriers >= 30.0 && effective_size >= 50.0;]==]
   [==[carriers = effective_size; bool const good = effective_size >= 50.0;]==])
-mutant(quick_degrees_of_freedom estimate/estimate.hpp unit/law_verdict.cpp
+mutant(degrees_of_freedom estimate/estimate.hpp unit/law_verdict.cpp
   "degrees of freedom are too many by one"
   [==[degrees_of_freedom = carriers > 1.0 ? carriers - 1.0 : 0.0;]==]
   [==[degrees_of_freedom = carriers;]==])
-mutant(quick_woodruff_clipped estimate/quantile_result.hpp unit/law_verdict.cpp
+mutant(woodruff_clipped estimate/quantile_result.hpp unit/law_verdict.cpp
   "limits of a quantile are clipped at the sample's own end"
   [==[if (!(target > 0.0 && target < 1.0)) return false;]==]
   [==[if (!(target > 0.0 && target < 1.0)) return limit = column_->value(upper ? column_->size() - 1 : 0), true;]==])
@@ -58,6 +58,11 @@ mutant(failed_runs_forgotten estimate/log_evidence.hpp unit/run_failures.cpp
       all.add(]==]
   [==[if (false)
       all.add(]==])
+
+mutant(weights_of_groups_forgotten estimate/block.hpp unit/sample_weigh.cpp
+  "a block does not add its weights to their groups"
+  [==[totals_.add_groups(groups_, counts_, weights_);]==]
+  [==[]==])
 
 # --- the jackknife ----------------------------------------------------------------------------------------------------
 mutant(one_group_too_few estimate/jackknife.hpp unit/law_jackknife.cpp
@@ -118,15 +123,15 @@ mutant(zero_weight_read estimate/block.hpp unit/run_failures.cpp
   [==[bool const possible = true;]==])
 
 # --- the test kit -----------------------------------------------------------------------------------------------------
-mutant(quick_ties_below proof/pool.hpp unit/proof_calibration.cpp
+mutant(ties_below proof/pool.hpp unit/proof_calibration.cpp
   "draws equal to the truth count as below it"
   [==[if (values[i] == truth) tied += weights[i];]==]
   [==[if (values[i] == truth) below += weights[i];]==])
-mutant(quick_envelope_pointwise proof/chances.hpp unit/proof_chances.cpp
+mutant(envelope_pointwise proof/chances.hpp unit/proof_chances.cpp
   "the envelope has its rate at each point, not in all"
   [==[if (leaving_probability(n, points, tried) <= rate) {]==]
   [==[if (true) {]==])
-mutant(quick_truth_outside_pool proof/pool.hpp unit/proof_calibration.cpp
+mutant(truth_outside_pool proof/pool.hpp unit/proof_calibration.cpp
   "the truth is not among the draws it is compared with"
   [==[double below = 0.0, tied = weights.back(), total = weights.back();]==]
   [==[double below = 0.0, tied = 0.0, total = 1e-300;]==])

@@ -26,7 +26,7 @@ function(mutant name file test breaks from to)
   string(REPLACE "${from}" "${to}" text "${text}")
   file(WRITE "${header}" "${text}")
   execute_process(
-    COMMAND ${LAUNCHER} "${COMPILER}" -std=c++20 -O1 -w "-I${home}/include" ${INCLUDES} "-I${ROOT}/tests"
+    COMMAND ${LAUNCHER} "${COMPILER}" -std=c++20 -O0 -w "-I${home}/include" ${INCLUDES} "-I${ROOT}/tests"
             "-DSTEELYARD_TEST_DATA=\"${ROOT}/tests/data\"" -c "${ROOT}/tests/${test}" -o "${home}/test.o"
     RESULT_VARIABLE result ERROR_VARIABLE said)
   if(result EQUAL 0)

@@ -148,6 +148,17 @@ TEST_CASE("a state whose prior weight is zero is never scored") {
   CHECK(sy::weigh(states, refuses_two, {.prior_weights = {1.0, 0.0, 1.0}}).expectation(law::itself).value == 2.5);
 }
 
+TEST_CASE("an event that no group met: the limit comes from the weight of the heaviest group") {
+  auto const grouped = sy::weigh(std::vector<double>{1.0, 2.0, 3.0, 4.0}, by_number, {.groups = {7, 9, 7, 9}});
+  auto const alone = sy::weigh(std::vector<double>{1.0, 2.0, 3.0, 4.0}, by_number);
+  auto const above_five = [](double x) { return x > 5.0; };
+  CHECK(grouped.probability(above_five).never_seen());
+  CHECK(grouped.probability(above_five).error_interval(0.95).upper == doctest::Approx(1.0 - std::pow(0.05, 0.6)));
+  CHECK(alone.probability(above_five).error_interval(0.95).upper == doctest::Approx(1.0 - std::pow(0.05, 0.4)));
+  CHECK(grouped.probability([](double x) { return x < 5.0; }).error_interval(0.95).lower ==
+        doctest::Approx(std::pow(0.05, 0.6)));
+}
+
 TEST_CASE("what weigh refuses, in words") {
   std::vector<double> const two{1.0, 2.0};
   auto const refused = [&](sy::weigh_options options) {
