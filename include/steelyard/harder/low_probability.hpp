@@ -68,7 +68,12 @@ auto low_probability(Sampler const& sampler, Margin const& margin, tempered_plan
     constexpr bool readable = detail::is_margin<Margin, X>;
     static_assert(readable, "steelyard: low_probability() takes a margin: a readout that returns one number, not bool, and is "
                             "above zero where the event happens");
-    if constexpr (readable) return detail::low_probability_of(sampler, detail::no_reading{}, margin, how, own...);
+    if constexpr (readable)
+      return detail::low_probability_of(sampler, detail::no_reading{}, margin, how, own...);
+    else
+      return detail::refused<low_probability_result<X>>();
+  } else {
+    return detail::refused<estimate>();
   }
 }
 /// The same given what was read: climbs to the reading first, then from level to level.
@@ -78,7 +83,10 @@ auto low_probability(pipeline<Sampler, Weighter> const& pipe, Margin const& marg
   constexpr bool readable = detail::is_margin<Margin, X>;
   static_assert(readable, "steelyard: low_probability() takes a margin: a readout that returns one number, not bool, and is "
                           "above zero where the event happens");
-  if constexpr (readable) return detail::low_probability_of(pipe.sampler(), pipe.weighter(), margin, how, own...);
+  if constexpr (readable)
+    return detail::low_probability_of(pipe.sampler(), pipe.weighter(), margin, how, own...);
+  else
+    return detail::refused<low_probability_result<X>>();
 }
 
 }  // namespace steelyard::inline v1
