@@ -113,7 +113,7 @@ mutant(first_to_fail estimate/sweep.hpp unit/run_failures.cpp
   "the failure that comes first in time is reported, not that of the lowest sample"
   [==[if (sample >= lowest_.load()) return;]==]
   [==[if (what_) return;]==])
-mutant(streams_renumbered sample/origin.hpp unit/run_failures.cpp
+mutant(streams_renumbered sample/origin.hpp unit/sample_states.cpp
   "after a failed run, the stream of a state is taken to be its position"
   [==[return samples.empty() ? i : samples[i];]==]
   [==[return i;]==])

@@ -35,7 +35,7 @@ TEST_CASE("mean z^2 of every estimator but the quantiles is near 1") {
     for (std::size_t q = 0; q < cells.size(); ++q) {
       std::string const question = questions[q];
       if (is_quantile(question)) continue;
-      // Copies that lie side by side make the jackknife's runs of 16 differ more than independent ones: wide, not narrow.
+      // Copies that lie side by side are not independent: the runs of 16 that the jackknife deletes differ too much or too little.
       if (p.name == "whole numbers, counted" && question == "own estimator") continue;
       // 64 groups of the jackknife have 63 degrees of freedom; the others have many carriers.
       double const want = question == "own estimator" ? by_student(63) : 1.0;
