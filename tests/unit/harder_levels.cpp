@@ -195,6 +195,27 @@ TEST_CASE("an event that every draw meets, or nearly, and one that cannot be") {
   CHECK(said<sy::not_kept>([&] { (void)never.sample(); }).find("no state with a margin above zero was found") != std::string::npos);
 }
 
+TEST_CASE("a single lineage left: an error bar of the floor, no interval, and broken") {
+  // A Poisson number of exponential sizes with their sum read sharply: few chains do not mix, and end in one lineage.
+  auto const sampler = [](sy::draws& draws) {
+    double left = 3.0;
+    point x{0.0};
+    while ((left += std::log(draws.uniform())) > 0.0) {
+      x.push_back(draws.exponential(1.0));
+      x[0] += x.back();
+    }
+    return x;
+  };
+  auto const reading = [](point const& x) { return sy::log_likelihood{-1250.0 * (4.0 - x[0]) * (4.0 - x[0])}; };
+  auto const p = sy::low_probability(sy::pipeline{sampler, reading}, [](point const& x) { return static_cast<double>(x.size()) - 7.5; },
+                                     {.seed = 1, .chains = 40, .draws = 500, .longest = 100});
+  REQUIRE(p.diagnosis().lineages() == 1.0);
+  CHECK(p.verdict() == sy::verdict::broken);
+  CHECK(p.standard_error > 0.0);
+  CHECK(p.standard_error < 1.0);
+  CHECK(!p.error_interval(0.95).lower_known);
+}
+
 TEST_CASE("levels: the same bits on two threads, frozen levels, a stop, and what is refused") {
   sy::tempered_plan how{.seed = 1, .chains = 50, .draws = 1000};
   auto const one = sy::low_probability(normals{2}, sum_over{4.0}, how);

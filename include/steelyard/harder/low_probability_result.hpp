@@ -25,7 +25,9 @@ class low_probability_result : public estimate {
  public:
   low_probability_result(estimate const& p, std::optional<weighted_sample<X>> states, steelyard::diagnosis health, std::size_t levels,
                          std::uint64_t calls)
-      : estimate(p), states_(std::move(states)), health_(std::move(health)), levels_(levels), calls_(calls) {}
+      : estimate(p), states_(std::move(states)), health_(std::move(health)), levels_(levels), calls_(calls) {
+    this->lower_verdict(health_.verdict());
+  }
 
   /// States in which the event happens, in proportion to their probability, with a count each.
   /// @throws not_kept where none was found
@@ -95,7 +97,9 @@ low_probability_result<typename Worker::state> result_of_levels(level_climb<Work
   std::vector<finding> findings = findings_of(on);
   if (levels.reached()) {
     weighted_sample<X> states = sample_of_ladder(on, sampler, weighter, on_failure, std::move(findings));
-    run_facts const facts = states.facts();
+    run_facts facts = states.facts();
+    // From a single lineage no error can be told: an error bar of the floor alone, and a broken verdict.
+    if (facts.groups < 1.5) facts.group_share_squares = 0.0;
     estimate const answer(std::min(1.0, p), level_terms(influence, p, levels.floor_square(), facts.correction()), facts, error_scale::logit);
     steelyard::diagnosis health = states.diagnosis();
     return {answer, std::move(states), std::move(health), levels.levels(), on.calls()};
