@@ -103,7 +103,8 @@ class bins {
   double const span = upper - lower;
   for (std::size_t i = 0; i <= n; ++i) edges[i] = lower + span * (static_cast<double>(i) / static_cast<double>(n));
   edges[n] = upper;
-  return bins(std::move(edges), static_cast<double>(n) / span);
+  double const per_width = static_cast<double>(n) / span;
+  return bins(std::move(edges), detail::is_finite(per_width) ? per_width : 0.0);  // infinite where widths are subnormal
 }
 
 /// n bins of equal width on a logarithmic scale. @throws bad_argument unless 0 < lower < upper, both finite, and n >= 1.
