@@ -39,7 +39,7 @@ TEST_CASE("one pass gives the bits of the kept sample, whatever the size") {
   for (std::uint64_t const size : sizes) {
     CAPTURE(size);
     sy::plan const plan{.size = size, .seed = 1};
-    CHECK((bits(law::ask_one_pass(problem, plan)) == bits(law::ask_one_pass(problem.run(plan)))));
+    CHECK(law::alike(bits(law::ask_one_pass(problem, plan)), bits(law::ask_one_pass(problem.run(plan)))));
   }
 }
 
@@ -53,7 +53,7 @@ TEST_CASE("one pass gives the bits of the kept sample with runs set aside and st
     auto const streamed = law::ask_one_pass(failing, plan);
     CHECK(streamed.drawn() == kept.drawn());
     CHECK(streamed.diagnosis().failed() == kept.diagnosis().failed());
-    CHECK((bits(streamed) == bits(law::ask_one_pass(kept))));
+    CHECK(law::alike(bits(streamed), bits(law::ask_one_pass(kept))));
   }
 }
 
@@ -75,7 +75,7 @@ TEST_CASE("one pass gives the bits of the kept sample where whole blocks at the 
   sy::plan const plan{.size = 9000, .source = std::make_shared<numbered const>(), .on_failure = sy::failures::set_aside};
   auto const kept = failing.run(plan);
   CHECK(kept.size() == 2100);
-  CHECK((bits(law::ask_one_pass(failing, plan)) == bits(law::ask_one_pass(kept))));
+  CHECK(law::alike(bits(law::ask_one_pass(failing, plan)), bits(law::ask_one_pass(kept))));
 }
 
 TEST_CASE("any number of threads and any executor give the same bits, kept and in one pass") {
@@ -126,14 +126,14 @@ TEST_CASE("the questions asked beside it change no answer") {
   sy::plan const plan{.size = 5'000, .seed = 5};
   auto const sample = problem.run(plan);
   auto const alone = bits(sample.expectation(law::itself));
-  CHECK((bits(law::ask_everything(sample).get<0>()) == alone));
-  CHECK((bits(problem.expectation(plan, law::itself)) == alone));
-  CHECK((bits(problem.probability(plan, law::above_one)) == bits(sample.probability(law::above_one))));
-  CHECK((bits(problem.log_evidence(plan)) == bits(sample.log_evidence())));
-  CHECK((bits(problem.ratio(plan, law::itself, law::squared)) == bits(sample.ratio(law::itself, law::squared))));
-  CHECK((bits(problem.difference(plan, law::itself, law::squared)) == bits(sample.difference(law::itself, law::squared))));
-  CHECK((bits(problem.histogram(plan, law::itself)) == bits(sample.histogram(law::itself))));
-  CHECK((bits(sample.interval(law::itself, 0.9)) == bits(law::ask_everything(sample).get<14>())));
+  CHECK(law::alike(bits(law::ask_everything(sample).get<0>()), alone));
+  CHECK(law::alike(bits(problem.expectation(plan, law::itself)), alone));
+  CHECK(law::alike(bits(problem.probability(plan, law::above_one)), bits(sample.probability(law::above_one))));
+  CHECK(law::alike(bits(problem.log_evidence(plan)), bits(sample.log_evidence())));
+  CHECK(law::alike(bits(problem.ratio(plan, law::itself, law::squared)), bits(sample.ratio(law::itself, law::squared))));
+  CHECK(law::alike(bits(problem.difference(plan, law::itself, law::squared)), bits(sample.difference(law::itself, law::squared))));
+  CHECK(law::alike(bits(problem.histogram(plan, law::itself)), bits(sample.histogram(law::itself))));
+  CHECK(law::alike(bits(sample.interval(law::itself, 0.9)), bits(law::ask_everything(sample).get<14>())));
 }
 
 TEST_CASE("a run that was stopped gives the bits of a run with the size it reached") {

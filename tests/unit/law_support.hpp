@@ -84,6 +84,23 @@ all_bits bits(Answer const& answer) {
   return all;
 }
 
+/// The same answers from two places of the program. With -ffast-math a formula may be put in another order wherever it is
+/// inlined, and then the last digits differ.
+inline bool alike(all_bits const& a, all_bits const& b) {
+#if defined(__FAST_MATH__)
+  if (a.size() != b.size()) return false;
+  for (std::size_t i = 0; i < a.size(); ++i) {
+    if (a[i] == b[i]) continue;
+    if ((a[i] << 1) >> 53 == 0) return false;  // a whole number, or zero
+    double const x = std::bit_cast<double>(a[i]), y = std::bit_cast<double>(b[i]);
+    if (!(std::abs(x - y) <= 1e-12 * std::abs(x))) return false;
+  }
+  return true;
+#else
+  return a == b;
+#endif
+}
+
 /// Equal but for rounding.
 inline bool close(double a, double b, double relative = 1e-12) {
   return std::abs(a - b) <= relative * std::max({std::abs(a), std::abs(b), 1e-300});
