@@ -6,6 +6,7 @@
 #include <iosfwd>
 #include <string>
 
+#include <steelyard/base/bits.hpp>
 #include <steelyard/base/elementary.hpp>
 #include <steelyard/base/error.hpp>
 #include <steelyard/base/student.hpp>
@@ -95,7 +96,7 @@ class estimate {
   /// the logit scale for a probability; one-sided for an event never or always seen.
   /// @throws bad_argument for a level outside (0, 1).
   interval error_interval(double level) const {
-    if (!(level > 0.0 && level < 1.0))
+    if (!detail::is_finite(level) || !(level > 0.0 && level < 1.0))
       throw bad_argument("error_interval: the level " + detail::plain_number(level) + " is outside (0, 1)");
     if (sided_ != side::both) {
       double const limit = one_sided_limit(level);

@@ -9,6 +9,7 @@
 #include <vector>
 
 #include <steelyard/base/algorithm.hpp>
+#include <steelyard/base/bits.hpp>
 #include <steelyard/base/error.hpp>
 #include <steelyard/base/text.hpp>
 #include <steelyard/estimate/bins.hpp>
@@ -73,7 +74,7 @@ class mode_result {
   /// and together at the level.                                                             [Bonferroni]
   /// @throws bad_argument for a level outside (0, 1).
   std::vector<std::size_t> rivals(double level) const {
-    if (!(level > 0.0 && level < 1.0))
+    if (!detail::is_finite(level) || !(level > 0.0 && level < 1.0))
       throw bad_argument("rivals: the level " + detail::plain_number(level) + " is outside (0, 1)");
     double const each = 1.0 - 2.0 * (1.0 - level) / static_cast<double>(leads_.size());
     std::vector<std::size_t> close;

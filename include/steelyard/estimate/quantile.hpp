@@ -8,6 +8,7 @@
 #include <utility>
 #include <vector>
 
+#include <steelyard/base/bits.hpp>
 #include <steelyard/base/error.hpp>
 #include <steelyard/base/text.hpp>
 #include <steelyard/estimate/estimator.hpp>
@@ -72,7 +73,7 @@ class column_estimator {
 };
 
 inline double checked_level(char const* where, double level) {
-  if (!(level > 0.0 && level < 1.0))
+  if (!is_finite(level) || !(level > 0.0 && level < 1.0))
     throw bad_argument(std::string(where) + ": " + plain_number(level) + " is outside (0, 1)");
   return level;
 }

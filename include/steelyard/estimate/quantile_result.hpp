@@ -5,6 +5,7 @@
 #include <memory>
 #include <utility>
 
+#include <steelyard/base/bits.hpp>
 #include <steelyard/base/student.hpp>
 #include <steelyard/estimate/weighted_column.hpp>
 
@@ -44,7 +45,7 @@ class quantile_result : public estimate {
   /// Where the exact quantile lies, given Monte Carlo error.
   /// @throws bad_argument for a level outside (0, 1).
   interval error_interval(double level) const {
-    if (!(level > 0.0 && level < 1.0))
+    if (!detail::is_finite(level) || !(level > 0.0 && level < 1.0))
       throw bad_argument("error_interval: the level " + detail::plain_number(level) + " is outside (0, 1)");
     interval limits;
     double const beyond = 0.5 * (1.0 - level);

@@ -8,6 +8,7 @@
 #include <type_traits>
 #include <utility>
 
+#include <steelyard/base/bits.hpp>
 #include <steelyard/base/count.hpp>
 #include <steelyard/draw/draws.hpp>
 #include <steelyard/draw/inversion.hpp>
@@ -34,7 +35,7 @@ class block_words {
 
   /// Makes word j one from which `draws::uniform()` returns u, for 0 < u < 1, to 2^-53.
   void set_uniform(std::size_t j, double u) {
-    if (!(u > 0.0 && u < 1.0)) throw bad_argument("block_words: the uniform number " + detail::plain_number(u) + " is outside (0, 1)");
+    if (!detail::is_finite(u) || !(u > 0.0 && u < 1.0)) throw bad_argument("block_words: the uniform number " + detail::plain_number(u) + " is outside (0, 1)");
     words_[j] = static_cast<std::uint64_t>(u * 0x1p52) << 12;
   }
   /// Makes word j one from which `draws::normal()` returns z.

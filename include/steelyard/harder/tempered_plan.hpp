@@ -5,6 +5,7 @@
 #include <stop_token>
 #include <string>
 
+#include <steelyard/base/bits.hpp>
 #include <steelyard/base/chrono.hpp>
 #include <steelyard/base/count.hpp>
 #include <steelyard/base/error.hpp>
@@ -42,8 +43,9 @@ inline void refuse_plan(char const* run, tempered_plan const& how) {
     throw bad_argument(std::string(run) + ": the plan's " + std::move(what) + "; " + std::move(rule));
   };
   if (how.chains < 8u) refuse("chains are " + std::to_string(how.chains.value()), "at least 8 are needed, and 200 are usual");
-  if (!(how.share > 0.0 && how.share < 1.0)) refuse("share is " + plain_number(how.share), "it must lie between 0 and 1");
-  if (!(how.level_share > 0.0 && how.level_share < 1.0))
+  auto const is_share = [](double x) { return is_finite(x) && x > 0.0 && x < 1.0; };
+  if (!is_share(how.share)) refuse("share is " + plain_number(how.share), "it must lie between 0 and 1");
+  if (!is_share(how.level_share))
     refuse("level_share is " + plain_number(how.level_share), "it must lie between 0 and 1");
   if (how.draws != 0u && how.draws < how.chains)
     refuse("draws are " + std::to_string(how.draws.value()), "at least one a chain is needed");
