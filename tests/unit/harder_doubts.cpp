@@ -16,45 +16,16 @@
 
 #include <steelyard/tempered.hpp>
 
+#include "harder_support.hpp"
 #include "law_support.hpp"
 
 namespace sy = steelyard;
+using harder::agrees;
+using harder::conjugate;
+using harder::first_of;
 using law::said;
 
 namespace {
-
-/// d normal deviates, each read as y with standard deviation s: all in closed form.
-template <std::size_t D>
-struct conjugate {
-  static constexpr double y = 0.5;
-  double s;
-
-  static std::array<double, D> sampler(sy::draws& draws) {
-    std::array<double, D> x{};
-    for (double& v : x) v = draws.normal();
-    return x;
-  }
-  sy::log_likelihood operator()(std::array<double, D> const& x) const {
-    double q = 0.0;
-    for (double const v : x) q += (y - v) * (y - v);
-    return sy::log_likelihood{-0.5 * q / (s * s)};
-  }
-  double mean() const { return y / (1.0 + s * s); }
-  double sd() const { return s / std::sqrt(1.0 + s * s); }
-  double log_evidence() const {
-    return 0.5 * static_cast<double>(D) * (std::log(s * s / (1.0 + s * s)) - y * y / (1.0 + s * s));
-  }
-};
-
-template <std::size_t D>
-double first_of(std::array<double, D> const& x) {
-  return x[0];
-}
-
-void agrees(sy::estimate const& e, double truth) {
-  CHECK(e.verdict() == sy::verdict::sound);
-  CHECK(std::abs(e.value - truth) <= 5.0 * e.standard_error);
-}
 
 bool finds(sy::diagnosis const& health, sy::finding_kind kind, std::string const& words) {
   for (sy::finding const& each : health.findings())
