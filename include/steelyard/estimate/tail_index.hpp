@@ -30,7 +30,7 @@ struct pareto_tail {
 /// Fits a generalised Pareto law to excesses over a threshold, in rising order.
 ///   [Zhang & Stephens, Technometrics 51(3), 2009, 316]
 /// @throws bad_argument unless the excesses are finite, not negative and in order.
-/// Cost  20 + sqrt(n) logarithms an excess.
+/// Cost  20 + sqrt(n) products an excess, and as many logarithms for each 16 of them.
 inline pareto_tail fit_pareto_tail(std::span<double const> excesses) {
   std::size_t const n = excesses.size();
   for (std::size_t i = 0; i < n; ++i)
@@ -46,13 +46,27 @@ inline pareto_tail fit_pareto_tail(std::span<double const> excesses) {
     for (double const x : excesses) sum += detail::portable_log1p(-theta * x);
     return sum / size;
   };
+  // The same for a likelihood: logarithms of products, of as many factors as cannot overflow. The smallest factor is above
+  // 1e-3. Where all are close to 1, the products would lose what they differ by.
+  auto const mean_log_of_products = [&](double theta) {
+    double const largest = 1.0 + std::abs(theta) * top;
+    if (std::abs(theta) * excesses[quarter - 1] < 1e-3 || largest > 1e60) return mean_log(theta);
+    std::size_t const together = largest > 1e15 ? 4 : 16;
+    double sum = 0.0;
+    for (std::size_t from = 0; from < n; from += together) {
+      double product = 1.0;
+      for (std::size_t i = from; i < std::min(n, from + together); ++i) product *= 1.0 - theta * excesses[i];
+      sum += detail::portable_log(product);
+    }
+    return sum / size;
+  };
   double const m = 20.0 + std::floor(std::sqrt(size));
   std::vector<double> thetas, likelihoods;
   double highest = std::numeric_limits<double>::lowest();
   for (double j = 0.5; j < m; j += 1.0) {
     double theta = 1.0 / top + (1.0 - std::sqrt(m / j)) / (3.0 * excesses[quarter - 1]);
     if (theta == 0.0) theta = std::numeric_limits<double>::epsilon() / top;
-    double const kappa = -mean_log(theta);
+    double const kappa = -mean_log_of_products(theta);
     thetas.push_back(theta);
     likelihoods.push_back(size * (detail::portable_log(theta / kappa) + kappa - 1.0));
     highest = std::max(highest, likelihoods.back());
