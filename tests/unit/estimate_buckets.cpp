@@ -4,7 +4,8 @@
 #include <steelyard/estimate/bins.hpp>
 #include <steelyard/estimate/column_buckets.hpp>
 #include <steelyard/estimate/histogram.hpp>
-#include <steelyard/estimate/quantile_result.hpp>
+#include <steelyard/estimate/quantile.hpp>
+#include <steelyard/estimate/splitters.hpp>
 
 #include <algorithm>
 #include <bit>
@@ -14,8 +15,10 @@
 #include <cstring>
 #include <limits>
 #include <memory>
+#include <span>
 #include <string>
 #include <thread>
+#include <utility>
 #include <vector>
 
 #include "unit/law_support.hpp"
@@ -23,6 +26,7 @@
 namespace sy = steelyard;
 using sy::detail::cell_sums;
 using sy::detail::column_buckets;
+using sy::detail::column_parts;
 using sy::detail::counted_entry;
 using sy::detail::plain_entry;
 
@@ -76,6 +80,38 @@ std::vector<counted_entry> entries_of(shape of, std::size_t n, std::uint64_t mos
   return all;
 }
 
+/// The entries in parts of uneven lengths, whose factors, powers of two, give the weights back.
+column_parts parts_of(std::vector<counted_entry> const& entries, bool counted) {
+  hashed next{3};
+  column_parts all;
+  for (std::size_t from = 0; from < entries.size();) {
+    std::size_t const n = std::min(entries.size() - from, static_cast<std::size_t>(next() % 1500));
+    double const factor = next() % 2 == 0 ? 1.0 : 0.25;
+    std::vector<double> values, weights;
+    std::vector<std::uint64_t> counts;
+    std::vector<std::uint32_t> groups;
+    for (std::size_t i = from; i < from + n; ++i) {
+      values.push_back(entries[i].value);
+      weights.push_back(entries[i].weight / factor);
+      counts.push_back(static_cast<std::uint64_t>(entries[i].count));
+      groups.push_back(entries[i].group);
+    }
+    sy::weighted_view view;
+    view.values = values;
+    view.weights = weights;
+    if (counted) {
+      view.counts = counts;
+      view.groups = groups;
+    }
+    column_parts part;
+    part.take(view);
+    part.rescale(factor);
+    all += part;
+    from += n;
+  }
+  return all;
+}
+
 bool same(cell_sums const& a, cell_sums const& b) { return a.weight == b.weight && a.second == b.second && a.fourth == b.fourth; }
 
 /// Everything that can be asked of a column, beside a plain sort. Returns what differed, or nothing.
@@ -109,7 +145,7 @@ std::string differs(column_buckets<Entry> const& column, std::vector<counted_ent
         if (high == n && after != n - 1) return "reaching more than there is" + where;
       }
     }
-    if constexpr (requires { Entry::keeps_order; }) {
+    if constexpr (requires { Entry::stays; }) {
       double in = 0.0, in_group = 0.0, seen = 0.0;
       column.for_each(i, [&](Entry const& each, bool within) {
         seen += each.count * each.weight;
@@ -128,18 +164,90 @@ std::string differs(column_buckets<Entry> const& column, std::vector<counted_ent
 
 }  // namespace
 
+namespace {
+
+double step(double x, int by) {
+  double const far = by > 0 ? std::numeric_limits<double>::max() : std::numeric_limits<double>::lowest();
+  for (int k = 0; k < std::abs(by); ++k) x = std::nextafter(x, far);
+  return x;
+}
+
+/// Sets of splitters for every way to find a bucket: none, few to a slot, too many to a slot, slots that cannot be had.
+std::vector<std::vector<double>> sets_of_splitters() {
+  double const most = std::numeric_limits<double>::max(), least = std::numeric_limits<double>::denorm_min();
+  double infinite;
+  std::uint64_t const bits = 0x7ff0000000000000u;
+  std::memcpy(&infinite, &bits, sizeof bits);
+  std::vector<std::vector<double>> sets = {{},
+                                           {2.5},
+                                           {0.0, 0.0, 0.0},
+                                           {-0.0, 0.0, 1.0},
+                                           {0.0, least, 2.0 * least, 3.0 * least},
+                                           {-most, most},
+                                           {-most, 0.0},
+                                           {-infinite, -1.0, 1.0, infinite},
+                                           {1e300, 1.5e300, most},
+                                           {-1e-300, 1e-300, 1e300},
+                                           {1.0, step(1.0, 1), step(1.0, 2), step(1.0, 3), step(1.0, 4), 2.0}};
+  for (double const power : {1.0, 2.0, 3.0, 20.0}) {  // ever closer together at their lower end
+    std::vector<double> set;
+    for (int k = 0; k < 255; ++k) set.push_back(std::pow((k + 1) / 255.0, power));
+    sets.push_back(set);
+    for (double& each : set) each = 1e6 + 1e-9 * each;
+    sets.push_back(set);
+  }
+  return sets;
+}
+
+}  // namespace
+
+TEST_CASE("the bucket of a number is how many splitters lie at or below it, whatever way it is found") {
+  for (std::vector<double> const& set : sets_of_splitters()) {
+    sy::detail::splitters const found(set);
+    std::vector<double> distinct = set, values = {0.0, -0.0, 1e-300, -1e300, std::numeric_limits<double>::denorm_min()};
+    distinct.erase(std::unique(distinct.begin(), distinct.end()), distinct.end());
+    CHECK(found.buckets() == distinct.size() + 1);
+    hashed next;
+    for (double const each : set)
+      for (int by = -3; by <= 3; ++by) values.push_back(step(each, by));
+    for (std::size_t k = 0; k < 1000 && !set.empty(); ++k) {
+      double const u = static_cast<double>(next() >> 11) * 0x1p-53;
+      values.push_back(set.front() * (1.0 - u) + set.back() * u);
+    }
+    for (double const each : {std::numeric_limits<double>::max(), std::numeric_limits<double>::lowest()}) values.push_back(each);
+    std::vector<std::uint8_t> buckets(values.size());
+    found.place(values.data(), values.size(), buckets.data());
+    std::size_t wrong = 0;
+    for (std::size_t i = 0; i < values.size(); ++i) {
+      std::size_t want = 0;
+      for (double const each : distinct) want += values[i] >= each ? 1u : 0u;
+      wrong += buckets[i] == want ? 0u : 1u;
+    }
+    CAPTURE(set.size());
+    CHECK(wrong == 0);
+  }
+}
+
 TEST_CASE("a column in buckets answers as a sorted one, whatever its length and the shape of its values") {
-  for (std::size_t const n : {1u, 2u, 255u, 256u, 257u, 4096u, 8191u, 8192u, 8193u, 20'000u, 70'000u})
+  for (std::size_t const n : {1u, 2u, 255u, 256u, 257u, 511u, 512u, 513u, 1024u, 4096u, 8193u, 20'000u, 70'000u})
     for (shape const of : shapes) {
       if (n > 20'000 && of != shape::any && of != shape::ties && of != shape::in_step) continue;
       CAPTURE(n);
       CAPTURE(static_cast<int>(of));
       std::vector<counted_entry> const one_each = entries_of(of, n, 1);
-      column_buckets<plain_entry> const plain(n, [&](std::size_t i) { return plain_entry{one_each[i].value, one_each[i].weight}; });
+      column_buckets<plain_entry> const plain(parts_of(one_each, false));
       CHECK(differs(plain, one_each) == "");
       std::vector<counted_entry> const several = entries_of(of, n, 5);
-      column_buckets<counted_entry> const counted(n, [&](std::size_t i) { return several[i]; });
+      column_buckets<counted_entry> const counted(parts_of(several, true));
       CHECK(differs(counted, several) == "");
+      for (bool const before : {false, true}) {
+        column_buckets<plain_entry> const all_at_once(parts_of(one_each, false));
+        if (before) static_cast<void>(all_at_once[n / 3]);
+        all_at_once.look_into_all();
+        CHECK(differs(all_at_once, one_each) == "");
+        all_at_once.look_into_all();
+        CHECK(differs(all_at_once, one_each) == "");
+      }
     }
 }
 
@@ -160,6 +268,7 @@ struct watched {
 struct watched_entry {
   watched value;
   double weight = 0.0;
+  static watched_entry of(column_parts::part const& part, std::size_t i) { return {watched(part.values[i]), part.weight(i)}; }
   static constexpr double copies() noexcept { return 1.0; }
 };
 
@@ -168,9 +277,8 @@ struct watched_entry {
 TEST_CASE("no shape of values makes a look into every bucket cost more than a sort") {
   std::size_t const n = 100'000;
   for (shape const of : shapes) {
-    std::vector<double> const values = values_of(of, n);
     watched::comparisons = 0;
-    column_buckets<watched_entry> const column(n, [&](std::size_t i) { return watched_entry{watched(values[i]), 1.0}; });
+    column_buckets<watched_entry> const column(parts_of(entries_of(of, n, 1), false));
     CHECK(watched::comparisons == 0);
     for (std::size_t i = 0; i < n; i += 16) static_cast<void>(column[i]);
     CAPTURE(static_cast<int>(of));
@@ -210,7 +318,9 @@ struct grouped_data {
       facts.groups = 40.0;
       facts.group_share_squares = 1.0 / 40.0;
     }
-    return std::make_shared<sy::detail::weighted_column const>(view, facts);
+    column_parts parts;
+    parts.take(view);
+    return std::make_shared<sy::detail::weighted_column const>(std::move(parts), facts);
   }
 };
 
@@ -243,6 +353,44 @@ TEST_CASE("what a column answers does not depend on what it was asked before, no
     for (std::thread& each : threads) each.join();
     CHECK(at_once == alone);
   }
+}
+
+TEST_CASE("an answer does not change when its estimator goes on, is merged or read back") {
+  grouped_data const data(3000);
+  sy::weighted_view first, second;
+  first.values = std::span<double const>(data.values).first(2000);
+  first.weights = std::span<double const>(data.weights).first(2000);
+  second.values = std::span<double const>(data.values).subspan(2000);
+  second.weights = std::span<double const>(data.weights).subspan(2000);
+  sy::run_facts facts;
+  facts.drawn = 3000;
+  facts.sum_squares = 1.0;
+  facts.sum = 100.0;
+  auto const itself = [](double x) { return x; };
+  auto const bits = [](sy::quantile_result const& r, double level) {
+    law::all_bits all;
+    law::put(all, r);
+    sy::interval const limits = r.error_interval(level);
+    for (double const each : {limits.lower, limits.upper}) all.push_back(std::bit_cast<std::uint64_t>(each));
+    return all;
+  };
+  auto sums = sy::quantile(itself, 0.3), later = sy::quantile(itself, 0.3), whole = sy::quantile(itself, 0.3);
+  sums.add(first.values, first.weights, first);
+  later.add(second.values, second.weights, second);
+  whole.add(first.values, first.weights, first);
+  auto const copy = sums;
+  sy::quantile_result const early = sums.answer(facts);
+  auto const then = bits(copy.answer(facts), 0.5);
+  sums += later;
+  sums.rescale(0.5);
+  whole += later;
+  whole.rescale(0.5);
+  CHECK(bits(sums.answer(facts), 0.9) == bits(whole.answer(facts), 0.9));
+  CHECK(bits(sums.answer(facts), 0.5) != then);
+  CHECK(bits(early, 0.5) == then);  // a level that was not looked at before
+  CHECK(bits(copy.answer(facts), 0.5) == then);
+  auto const moved = std::move(sums);
+  CHECK(bits(moved.answer(facts), 0.9) == bits(whole.answer(facts), 0.9));
 }
 
 namespace {

@@ -26,6 +26,7 @@ namespace steelyard::inline v1 {
 class cumulative_result {
  public:
   explicit cumulative_result(std::shared_ptr<detail::weighted_column const> column) : column_(std::move(column)) {
+    column_->look_into_all();
     for (std::size_t i = 0; i < column_->size(); ++i)
       if (i + 1 == column_->size() || column_->value(i) < column_->value(i + 1)) ends_.push_back(i + 1);
   }
@@ -71,8 +72,8 @@ class cumulative_estimator : public detail::column_estimator<Readout> {
   explicit cumulative_estimator(Readout its_readout) : detail::column_estimator<Readout>(std::move(its_readout)) {}
 
   [[nodiscard]] cumulative_estimator fresh() const { return cumulative_estimator(this->readout()); }
-  [[nodiscard]] cumulative_result answer(run_facts const& facts) const { return answer_from(this->view(), facts); }
-  [[nodiscard]] cumulative_result answer_from(weighted_view const& all, run_facts const& facts) const {
+  [[nodiscard]] cumulative_result answer(run_facts const& facts) const { return answer_from(this->parts(), facts); }
+  [[nodiscard]] cumulative_result answer_from(detail::column_parts const& all, run_facts const& facts) const {
     return cumulative_result(this->column(all, facts));
   }
 };
