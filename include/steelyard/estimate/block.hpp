@@ -68,12 +68,13 @@ class block {
   [[nodiscard]] std::size_t stride() const noexcept { return capacity_; }
 
   /// Turns log-weights to weights and packs the columns. @pre every push is done
-  void close(how_drawn how) {
+  /// @param with_largest  whether the totals are to know the largest log-weights
+  void close(how_drawn how, bool with_largest = true) {
     how_ = how;
     std::span<double const> const logs = std::span<double const>(log_weights_).first(size_);
     totals_ = weight_totals::of(logs, counts_, std::span<double>(weights_.data(), size_), size_ - kept_);
     totals_.add_groups(groups_, counts_, weights_);
-    totals_.largest = seen_.take(logs, counts_, totals_.maximum);
+    if (with_largest) totals_.largest = seen_.take(logs, counts_, totals_.maximum);
     if (kept_ == size_)
       std::copy_n(weights_.begin(), kept_, kept_weights_.begin());
     else

@@ -21,7 +21,7 @@ class whole_columns {
   whole_columns() = default;
   /// @param columns  how many there are in each part
   whole_columns(column_parts const& parts, std::size_t columns) {
-    vectors& to = *own_;
+    vectors& to = own();
     to.values.reserve(parts.size() * columns);
     to.weights.reserve(parts.size());
     for (std::size_t c = 0; c < columns; ++c)
@@ -32,8 +32,8 @@ class whole_columns {
       if (each.groups != nullptr) append(to.groups, each.groups, each.size);
     }
   }
-  whole_columns(whole_columns const& other) : own_(std::make_shared<vectors>(*other.own_)) {}
-  whole_columns(whole_columns&& other) : own_(std::exchange(other.own_, std::make_shared<vectors>())) {}
+  whole_columns(whole_columns const& other) : own_(other.own_ ? std::make_shared<vectors>(*other.own_) : nullptr) {}
+  whole_columns(whole_columns&&) = default;
   whole_columns& operator=(whole_columns other) noexcept {
     own_.swap(other.own_);
     return *this;
@@ -54,18 +54,19 @@ class whole_columns {
   /// It lasts until something is changed.
   [[nodiscard]] weighted_view view(how_drawn how = how_drawn::independent) const noexcept {
     weighted_view all;
+    all.how = how;
+    if (!own_) return all;
     all.values = own_->values;
     all.weights = own_->weights;
     all.counts = own_->counts;
     all.groups = own_->groups;
-    all.how = how;
     return all;
   }
   [[nodiscard]] column_parts lent() const {
-    own_->lent.store(true, std::memory_order_relaxed);
-    weighted_view const all = view();
     column_parts parts;
-    parts.share(own_, all);
+    if (!own_) return parts;
+    own_->lent.store(true, std::memory_order_relaxed);
+    parts.share(own_, view());
     return parts;
   }
 
@@ -93,13 +94,19 @@ class whole_columns {
   static void append(std::vector<T>& to, T const* from, std::size_t n) {
     to.insert(to.end(), from, from + n);
   }
-  [[nodiscard]] vectors const& own() const noexcept { return *own_; }
+  [[nodiscard]] vectors const& own() const {
+    static vectors const none;
+    return own_ ? *own_ : none;
+  }
   [[nodiscard]] vectors& own() {
-    if (own_->lent.load(std::memory_order_relaxed)) own_ = std::make_shared<vectors>(*own_);
+    if (!own_)
+      own_ = std::make_shared<vectors>();
+    else if (own_->lent.load(std::memory_order_relaxed))
+      own_ = std::make_shared<vectors>(*own_);
     return *own_;
   }
 
-  std::shared_ptr<vectors> own_ = std::make_shared<vectors>();
+  std::shared_ptr<vectors> own_;  // null: nothing was taken in
 };
 
 }  // namespace steelyard::inline v1::detail

@@ -61,27 +61,28 @@ void keeping_run(Sampler const& draw, Weighter const& weigh_with, plan const& ho
   std::uint64_t first = from / block_size;
   if (from == 0) first = keeper.take_up(shared, [&](byte_reader& in) { load_part(in, part, keep_states); });
   if (from > 0) check_extension(pool.take()->making(), shared, origin, part.samples, part.log_weights);
-  if (how.time_limit.count() == 0 && !how.token.stop_possible()) {
-    if (keep_states) part.states.reserve(static_cast<std::size_t>(how.size.value()));
-    part.log_weights.reserve(static_cast<std::size_t>(how.size.value()));
-  }
+  if (how.time_limit.count() == 0 && !how.token.stop_possible())
+    part.reserve(static_cast<std::size_t>(how.size.value()), keep_states);
   rounds all(how, first, how.size);
+  std::vector<kept_part<X>> parts;  // of one round after another: pages of fresh memory cost more than what is written there
   all.each(
       [&](std::uint64_t begin, std::uint64_t end) {
         std::vector<stretch> const tasks = stretches(begin, end, longest_stretch);
-        std::vector<kept_part<X>> parts(tasks.size());
+        if (parts.size() < tasks.size()) parts.resize(tasks.size());
         first_failure failure;
         origin.execute(tasks.size(), [&](std::size_t t) {
           failure.guard(tasks[t].first * block_size, [&] {
             auto const own = pool.take();
-            for (std::uint64_t b = tasks[t].first; b < tasks[t].first + (std::uint64_t{1} << tasks[t].level); ++b) {
+            std::uint64_t const blocks = std::uint64_t{1} << tasks[t].level;
+            parts[t].reserve(static_cast<std::size_t>(std::min(blocks * block_size, how.size.value())), keep_states);
+            for (std::uint64_t b = tasks[t].first; b < tasks[t].first + blocks; ++b) {
               if (failure.before(b * block_size)) return;
               own->fill(b, keep_states, from, parts[t]);
             }
           });
         });
         failure.rethrow();
-        for (auto& each : parts) part.append(std::move(each));
+        for (auto& each : parts) part.append(each);
       },
       [&] { return shared.failed; },
       [&](std::uint64_t next, bool over) {

@@ -120,13 +120,23 @@ struct kept_part {
   std::vector<std::vector<double>> scores;
   std::vector<std::uint64_t> samples;
 
-  void append(kept_part&& other) {
+  /// Room for so many samples in all.
+  void reserve(std::size_t n, bool keep_states) {
+    if (keep_states) states.reserve(n);
+    log_weights.reserve(n);
+    samples.reserve(n);
+  }
+  /// Empties the other one, whose memory stays with it.
+  void append(kept_part& other) {
     states.append(std::move(other.states));
     log_weights.insert(log_weights.end(), other.log_weights.begin(), other.log_weights.end());
     scores.resize(other.scores.size());
     for (std::size_t k = 0; k < scores.size(); ++k)
       scores[k].insert(scores[k].end(), other.scores[k].begin(), other.scores[k].end());
     samples.insert(samples.end(), other.samples.begin(), other.samples.end());
+    other.log_weights.clear();
+    for (auto& column : other.scores) column.clear();
+    other.samples.clear();
   }
 };
 

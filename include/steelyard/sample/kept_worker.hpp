@@ -70,7 +70,7 @@ class kept_worker {
       std::span<double> const out = b.base(to - from);
       weights_from_logs(std::span<double const>(columns_.base).subspan(from, to - from), columns_.base_maximum, out);
     }
-    b.close(origin_.how);
+    b.close(origin_.how, sizeof...(Es) == 0);  // the sample knows its largest weights once it is made
   }
 
  private:
