@@ -16,8 +16,10 @@ namespace steelyard::inline v1::detail {
 inline std::vector<std::size_t> stratified_positions(std::span<double const> weights, std::size_t k, draws& source) {
   int const bits = share_bits(k);
   std::vector<std::size_t> positions(k);
-  for (std::size_t j = 0; j < k; ++j) positions[j] = (std::uint64_t{j} << bits) + (source() >> (64 - bits));
-  points_to_positions(weights, std::uint64_t{k} << bits, positions);
+  lay_out(weights, std::uint64_t{k} << bits, positions, [&](std::size_t from, std::size_t n, std::uint64_t* points) {
+    draws_access::fill(source, std::span<std::uint64_t>(points, n));
+    for (std::size_t j = 0; j < n; ++j) points[j] = (std::uint64_t{from + j} << bits) + (points[j] >> (64 - bits));
+  });
   return positions;
 }
 

@@ -7,36 +7,101 @@
 #include <vector>
 
 #include <steelyard/base/algorithm.hpp>
+#include <steelyard/base/isa.hpp>
+#include <steelyard/base/mark_lanes.hpp>
 #include <steelyard/sample/positions.hpp>
 
 namespace steelyard::inline v1::detail {
+
+/// Writes copies of positions one after another, given where each one's copies end: each position is marked where its
+/// copies begin, and marks are spread up to the next. No branch depends on how many copies there are.
+class copies_writer {
+ public:
+  copies_writer(std::span<std::size_t> out, isa width) noexcept
+      : out_(out),
+        skew_(reinterpret_cast<std::uintptr_t>(out.data()) / sizeof(std::size_t) % line),
+        width_(width),
+        past_caches_(out.size() >= (std::size_t{1} << 22)) {}
+
+  [[nodiscard]] bool full() const noexcept { return from_ >= out_.size(); }
+
+  /// Copies of first, first + 1, ... up to these ends, which rise.
+  void write(std::size_t first, std::uint64_t const* ends, std::size_t n) noexcept {
+    for (std::size_t i = 0; i < n && !full();) {
+      std::uint64_t const reach = done_ + room;
+      std::size_t const stop = ends[n - 1] <= reach ? n : static_cast<std::size_t>(std::upper_bound(ends + i, ends + n, reach) - ends);
+      if (stop == i) {  // one with many copies
+        std::size_t const to = static_cast<std::size_t>(std::min<std::uint64_t>(ends[i], out_.size()));
+        spread(from_);
+        marks_[0] = 0;
+        std::fill(out_.begin() + static_cast<std::ptrdiff_t>(from_), out_.begin() + static_cast<std::ptrdiff_t>(to), first + i);
+        from_ = done_ = to;
+        marks_[0] = first + ++i;
+        continue;
+      }
+      std::uint64_t const start = done_;
+      for (; i + 4 <= stop; i += 4) {  // four at a time take half the time
+        std::uint64_t const a = ends[i] - start, b = ends[i + 1] - start, c = ends[i + 2] - start, d = ends[i + 3] - start;
+        marks_[a] = first + i + 1;
+        marks_[b] = first + i + 2;
+        marks_[c] = first + i + 3;
+        marks_[d] = first + i + 4;
+      }
+      for (; i < stop; ++i) marks_[ends[i] - start] = first + i + 1;
+      from_ = static_cast<std::size_t>(ends[stop - 1]);
+      if (full()) continue;
+      std::size_t const whole = (from_ + skew_) / line * line;  // whole cache lines
+      if (whole <= done_ + skew_) continue;
+      std::size_t const before = done_;
+      spread(whole - skew_);
+      for (std::size_t j = done_; j <= from_; ++j) {
+        marks_[j - done_] = marks_[j - before];
+        marks_[j - before] = 0;
+      }
+    }
+  }
+  /// Copies of `last` to the end.
+  void finish(std::size_t last) noexcept {
+    std::size_t const to = std::min(from_, out_.size());
+    spread(to);
+    std::fill(out_.begin() + static_cast<std::ptrdiff_t>(to), out_.end(), last);
+    if (past_caches_) past_caches_done();
+  }
+
+ private:
+  static constexpr std::size_t room = 2048, line = 8;
+
+  void spread(std::size_t to) noexcept {
+    top_ = spread_marks(width_, marks_, to - done_, top_, out_.data() + done_, past_caches_);
+    done_ = to;
+  }
+
+  std::span<std::size_t> out_;
+  std::size_t skew_;       // places from the start of a cache line to out's first
+  std::size_t from_ = 0;   // where the next copies begin
+  std::size_t done_ = 0;   // what is written; marks_[0] is that of the next place
+  std::uint64_t top_ = 0;  // the last position written
+  isa width_;
+  bool past_caches_;
+  std::uint64_t marks_[room + 1] = {};
+};
 
 /// Positions of k draws in rising order, by steps of equal length from one
 /// uniform start: copies of i are the points j + u that fall below the running sum of k W.
 ///   unbiased; expected copies k W_i                          [Douc, Cappe & Moulines 2005]
 /// Cost  about 1 ns a weight and a draw: four copies are written whether wanted or not, and the place moves on by as many
 ///       as count.
-inline void systematic_positions(std::span<double const> weights, double u, std::span<std::size_t> positions) {
+inline void systematic_positions(std::span<double const> weights, double u, std::span<std::size_t> positions,
+                                 isa width = widest_isa()) {
   std::size_t const k = positions.size(), last = last_position(weights);
   int const bits = share_bits(k);
   std::uint64_t const one = std::uint64_t{1} << bits;
   whole_shares const shares(weights, k * one);
   std::uint64_t sum = one - 1 - static_cast<std::uint64_t>(u * static_cast<double>(one));
-  std::size_t from = 0, i = 0;
-  std::size_t* const out = positions.data();
-  for (; i < last && from + 4 <= k; ++i) {
-    out[from] = out[from + 1] = out[from + 2] = out[from + 3] = i;
-    std::size_t const to = static_cast<std::size_t>((sum += shares(weights[i])) >> bits);
-    if (to > from + 4) [[unlikely]]
-      std::fill(out + from + 4, out + std::min(to, k), i);
-    from = to;
-  }
-  for (; i < last && from < k; ++i) {
-    std::size_t const to = static_cast<std::size_t>((sum += shares(weights[i])) >> bits);
-    if (to > from) std::fill(out + from, out + std::min(to, k), i);
-    from = to;
-  }
-  if (from < k) std::fill(out + from, out + k, last);
+  running_shares parts(weights.first(last), shares, sum, bits);
+  copies_writer copies(positions, width);
+  while (!copies.full() && parts.next(width)) copies.write(parts.first(), parts.sums(), parts.size());
+  copies.finish(last);
 }
 inline std::vector<std::size_t> systematic_positions(std::span<double const> weights, std::size_t k, double u) {
   std::vector<std::size_t> positions(k);
