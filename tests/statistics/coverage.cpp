@@ -23,6 +23,8 @@ char const* may_miss(problem const& p, std::string const& question) {
   if (p.name == "whole numbers, counted" && question == "own estimator")
     return "copies of a state lie side by side, and the jackknife takes runs of 16 neighbours for independent of each other; "
            "an own_error in the estimator mends it";
+  if (p.name == "16 groups, no reading" && (question == "bin" || question == "density"))
+    return "sixteen shares of a bin in the middle cannot show how skewed they are, which 99 % intervals need; more groups mend it";
   return nullptr;
 }
 char const* may_cover_more(problem const& p, std::string const& question) {
@@ -35,9 +37,6 @@ char const* may_cover_more(problem const& p, std::string const& question) {
 char const* may_be_far(problem const& p, std::string const& question) {
   if (p.exact.lattice && is_quantile(question))
     return "a whole number is right, or off by one whatever its standard error; a probability has no such steps";
-  if (p.name == "two modes" && question == "median")
-    return "no state lies between the modes, where the median is: a standard error spans that gap or stops before it, and no "
-           "number of samples mends that; ask for the probability of a mode";
   if (p.name.starts_with("8 groups")) return "eight group sums cannot show how skewed they are; more groups mend it";
   if (p.name.starts_with("16 groups")) return "sixteen group sums cannot show how skewed they are; more groups mend it";
   if (question == "own estimator")

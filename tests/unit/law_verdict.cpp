@@ -116,20 +116,30 @@ TEST_CASE("never seen and always seen: one-sided limits, and no error bar") {
   CHECK(above.upper == 1.0);
 }
 
-TEST_CASE("an end of a quantile's limits with too little beyond it is unknown, not clipped") {
+namespace {
+
+/// A quantile of values of equal weight.
+sy::quantile_result quantile_of(std::vector<double> const& values, double p) {
   auto const itself = [](double x) { return x; };
-  auto const of_twenty = [&](double p) {
-    sy::quantile_estimator<decltype(itself)> e(itself, p);
-    std::vector<double> values, weights(20, 1.0);
+  sy::quantile_estimator<decltype(itself)> e(itself, p);
+  std::vector<double> const weights(values.size(), 1.0);
+  sy::weighted_view view;
+  view.values = values;
+  view.weights = weights;
+  e.add(values, weights, view);
+  sy::run_facts facts;
+  facts.drawn = values.size();
+  facts.sum = facts.sum_squares = static_cast<double>(values.size());
+  return e.answer(facts);
+}
+
+}  // namespace
+
+TEST_CASE("an end of a quantile's limits with too little beyond it is unknown, not clipped") {
+  auto const of_twenty = [](double p) {
+    std::vector<double> values;
     for (int i = 1; i <= 20; ++i) values.push_back(i);
-    sy::weighted_view view;
-    view.values = values;
-    view.weights = weights;
-    e.add(values, weights, view);
-    sy::run_facts facts;
-    facts.drawn = 20;
-    facts.sum = facts.sum_squares = 20.0;
-    return e.answer(facts);
+    return quantile_of(values, p);
   };
   // F(18) = 0.9 with se sqrt(0.09/19) = 0.069: twice that reaches past 1 above, and to F = 0.75 or less below
   sy::interval const high = of_twenty(0.9).error_interval(0.95), low = of_twenty(0.1).error_interval(0.95);
@@ -144,4 +154,22 @@ TEST_CASE("an end of a quantile's limits with too little beyond it is unknown, n
   CHECK(middle.upper_known);
   CHECK(middle.lower < 10.0);
   CHECK(middle.upper > 10.0);
+}
+
+TEST_CASE("a quantile is sound only where its standard error tells how far limits reach") {
+  // Two clusters of 2000 at -1 and 1, each 0.2 wide. F has standard error 0.0079 in the middle.
+  std::vector<double> values;
+  for (int i = 0; i < 4000; ++i) values.push_back((i < 2000 ? -1.1 : 0.9) + 0.2 * (i % 2000) / 2000.0);
+  CHECK(quantile_of(values, 0.25).verdict() == sy::verdict::sound);
+  CHECK(quantile_of(values, 0.75).verdict() == sy::verdict::sound);
+  // Two standard errors below the gap: the error bar knows one cluster, three standard errors reach the other.
+  sy::quantile_result const below = quantile_of(values, 0.484);
+  CHECK(below.standard_error < 0.01);
+  CHECK(below.verdict() == sy::verdict::strained);
+  // At the gap: the error bar is the gap, and further limits reach no further.
+  sy::quantile_result const at = quantile_of(values, 0.5);
+  CHECK(at.standard_error > 0.5);
+  CHECK(at.verdict() == sy::verdict::strained);
+  // Far enough from it all is well again.
+  CHECK(quantile_of(values, 0.46).verdict() == sy::verdict::sound);
 }

@@ -15,7 +15,9 @@ namespace steelyard::inline v1 {
 ///   ends: the quantiles at p -+ t s, s the standard error of F at the value; t has the degrees of freedom
 ///   that the carriers at that very end allow, so an end with too little beyond it is unbounded, not clipped
 ///                                                            [Woodruff, JASA 47, 1952, 635]
-///   standard error: half the width of the 68.27 % limits.
+///   standard error: half the width of the 68.27 % limits. Where it does not tell how far the exact quantile may lie the
+///   verdict is no better than `strained`: one of the 99.73 % limits lies over 12 standard errors away, as across a gap
+///   between modes, or both together lie within 3, as where the 68.27 % limits took in the gap already.
 /// Handed on as a plain `estimate` it answers value -+ t se in place of Woodruff limits.
 class quantile_result : public estimate {
  public:
@@ -36,6 +38,8 @@ class quantile_result : public estimate {
       lower_verdict(steelyard::verdict::broken);
     else if (!usual.lower_known || !usual.upper_known)
       lower_verdict(steelyard::verdict::strained);
+    else if (verdict() == steelyard::verdict::sound && !tells_how_far())
+      lower_verdict(steelyard::verdict::strained);
   }
 
   /// The order p of the quantile, and F at the value, with its error.
@@ -54,9 +58,16 @@ class quantile_result : public estimate {
     return limits;
   }
 
-  static constexpr double one_sigma = 0.682689492137085897;
+  static constexpr double one_sigma = 0.682689492137085897, three_sigma = 0.997300203936739811;
 
  private:
+  /// Whether limits reach about as far as the standard error says, where both are known.
+  [[nodiscard]] bool tells_how_far() const {
+    interval const far = error_interval(three_sigma);
+    double const three = 3.0 * standard_error;
+    double const up = far.upper_known ? far.upper - value : three, down = far.lower_known ? value - far.lower : three;
+    return up <= 4.0 * three && down <= 4.0 * three && up + down >= three;
+  }
   /// One end, by fixed point: fewer carriers beyond mean a larger t, and a further end.
   bool end(double beyond, bool upper, double& limit) const {
     double dof = degrees_of_freedom, reach = 0.0;
