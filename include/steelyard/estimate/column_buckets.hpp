@@ -154,7 +154,7 @@ class column_buckets {
 
   /// Finds every entry's bucket, how many there are in each, and the sums over each.
   void add_up(std::vector<cell_sums>& sums) {
-    constexpr std::size_t run = 1024;
+    constexpr std::size_t run = side_by_side;
     struct alignas(32) powers {
       double of[4] = {};  // w, w^2, w^4, entries
       void add(double count, double w) noexcept {
@@ -171,6 +171,8 @@ class column_buckets {
     for (auto const& part : parts_)
       for (std::size_t from = 0; from < part.size; from += run) {
         std::size_t const n = std::min(run, part.size - from);
+        ask_for({part.values, part.size}, from + far_ahead, n);
+        ask_for({part.weights, part.size}, from + far_ahead, n);
         splitters_.place(part.values + from, n, bucket);
         std::size_t i = 0;
         for (; i + 2 <= n; i += 2) {

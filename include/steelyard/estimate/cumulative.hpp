@@ -107,8 +107,9 @@ class cumulative_points_estimator {
 
   void add(std::span<double const> values, std::span<double const> weights, weighted_view const& view) {
     if (view.groups.empty() && view.counts.empty() && points_.size() <= 32) {
-      detail::add_to_cells(cells_, weights, [&](std::size_t first, std::size_t n, std::uint64_t* cells) {
-        double const* const x = values.data() + first;
+      detail::add_to_cells(cells_, values, weights, [&](std::span<double const> some, std::uint64_t* cells) {
+        double const* const x = some.data();
+        std::size_t const n = some.size();
         std::fill(cells, cells + n, std::uint64_t{0});
         for (double const point : points_)  // without branches, which could not be foretold
           for (std::size_t i = 0; i < n; ++i) cells[i] += point < x[i] ? 1u : 0u;

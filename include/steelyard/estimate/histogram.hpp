@@ -48,9 +48,8 @@ class histogram_estimator {
 
   void add(std::span<double const> values, std::span<double const> weights, weighted_view const& view) {
     if (view.groups.empty() && view.counts.empty()) {
-      detail::add_to_cells(cells_, weights, [&](std::size_t first, std::size_t n, std::uint64_t* cells) {
-        edges_->cells(values.subspan(first, n), cells);
-      });
+      detail::add_to_cells(cells_, values, weights,
+                           [&](std::span<double const> some, std::uint64_t* cells) { edges_->cells(some, cells); });
       return;
     }
     if (view.groups.empty()) {

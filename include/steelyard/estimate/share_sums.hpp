@@ -6,6 +6,7 @@
 #include <cstdint>
 #include <span>
 #include <tuple>
+#include <type_traits>
 #include <vector>
 
 #include <steelyard/base/algorithm.hpp>
@@ -40,12 +41,26 @@ struct cell_sums {
   }
 };
 
-/// Adds weights to cells. Sums lie 32 bytes apart meanwhile, so that two of the three go through one register, and each
-/// second entry has sums of its own, so that neighbours in one cell do not wait for each other.
-/// @param cells_of  writes the cells of entries [first, first + n) to an array
+/// Asks for numbers that are soon to be read, as far as there are any.
+inline void ask_for([[maybe_unused]] std::span<double const> from, [[maybe_unused]] std::size_t first,
+                    [[maybe_unused]] std::size_t n) noexcept {
+#if defined(__GNUC__)
+  constexpr std::size_t line = 8;
+  for (std::size_t i = first; i < std::min(first + n, from.size()); i += line) __builtin_prefetch(from.data() + i);
+#endif
+}
+/// Numbers that are worked on at once where there are two kinds of work, so that one fills the other's waits, and how far
+/// ahead of them the next are asked for.
+inline constexpr std::size_t side_by_side = 64;
+inline constexpr std::size_t far_ahead = 256;
+
+/// Adds weights to the cells of values. Sums lie 32 bytes apart meanwhile, so that two of the three go through one register,
+/// and each second entry has sums of its own, so that neighbours in one cell do not wait for each other.
+/// @param cells_of  writes the cells of some values to an array
 template <class CellsOf>
-void add_to_cells(std::vector<cell_sums>& cells, std::span<double const> weights, CellsOf cells_of) {
-  constexpr std::size_t run = 256;
+void add_to_cells(std::vector<cell_sums>& cells, std::span<double const> values, std::span<double const> weights,
+                  CellsOf cells_of) {
+  constexpr std::size_t run = side_by_side;
   struct alignas(32) powers {
     double of[4] = {};  // w, w^2, w^4
     void add(double w) noexcept {
@@ -58,16 +73,20 @@ void add_to_cells(std::vector<cell_sums>& cells, std::span<double const> weights
   std::uint64_t at[run];
   std::vector<powers> sums(2 * cells.size());
   powers *const even = sums.data(), *const odd = even + cells.size();
-  for (std::size_t first = 0; first < weights.size(); first += run) {
-    std::size_t const n = std::min(run, weights.size() - first);
-    cells_of(first, n, at);
+  auto const add_run = [&](std::size_t first, auto n) {  // n known to the compiler where it can be
+    ask_for(values, first + far_ahead, n);
+    ask_for(weights, first + far_ahead, n);
+    cells_of(values.subspan(first, n), at);
     double const* const from = weights.data() + first;
     for (std::size_t i = 0; i + 1 < n; i += 2) {
       even[at[i]].add(from[i]);
       odd[at[i + 1]].add(from[i + 1]);
     }
     if (n % 2 != 0) even[at[n - 1]].add(from[n - 1]);
-  }
+  };
+  std::size_t first = 0;
+  for (; first + run <= weights.size(); first += run) add_run(first, std::integral_constant<std::size_t, run>());
+  if (first < weights.size()) add_run(first, weights.size() - first);
   for (std::size_t b = 0; b < cells.size(); ++b)
     cells[b] += cell_sums{even[b].of[0] + odd[b].of[0], even[b].of[1] + odd[b].of[1], even[b].of[2] + odd[b].of[2]};
 }
