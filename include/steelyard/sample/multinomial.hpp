@@ -57,10 +57,13 @@ inline void multinomial_positions(std::span<double const> weights, draws& source
   double const factor = static_cast<double>(whole) / sums.total();
   std::uint64_t point = 0;
   lay_out(weights, whole, positions, [&](std::size_t from, std::size_t n, std::uint64_t* points) {
-    std::memcpy(spacings, positions.data() + from, n * sizeof(double));
-    std::size_t const groups = (n + virtual_lanes - 1) / virtual_lanes;
-    std::fill(spacings + n, spacings + groups * virtual_lanes, 0.0);
-    point = running_sums(width, spacings, 1.0, factor, point, 0, points, groups);
+    std::size_t const groups = n / virtual_lanes, rest = n % virtual_lanes;
+    std::size_t* const here = positions.data() + from;
+    point = running_sums(width, reinterpret_cast<double const*>(here), 1.0, factor, point, 0, points, groups);
+    if (rest == 0) return;
+    double few[virtual_lanes] = {};
+    std::memcpy(few, here + n - rest, rest * sizeof(double));
+    point = running_sums(width, few, 1.0, factor, point, 0, points + n - rest, 1);
   }, width);
 }
 inline std::vector<std::size_t> multinomial_positions(std::span<double const> weights, std::size_t k, draws& source) {
