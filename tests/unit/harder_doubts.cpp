@@ -143,8 +143,8 @@ TEST_CASE("plans, likelihoods and samplers that cannot serve are refused in one 
   auto const throws = [](sy::draws&) -> std::array<double, 4> { throw std::runtime_error("no ice today"); };
   CHECK(said<sy::failed_sample>([&] { sy::run_tempered(sy::pipeline{throws, four{0.1}}, small()); }).find("no ice today") !=
         std::string::npos);
-  // Beyond what arithmetic bears: two log-likelihoods whose difference overflows.
-  auto const cliff = [](std::array<double, 4> const& x) { return sy::log_likelihood{x[0] > 0.0 ? 1e308 : -1e308}; };
+  // Beyond what arithmetic bears: two log-likelihoods whose difference overflows, and too few draws have the higher one.
+  auto const cliff = [](std::array<double, 4> const& x) { return sy::log_likelihood{x[0] > 1.0 ? 1e308 : -1e308}; };
   CHECK(!said<sy::error>([&] { sy::run_tempered(sy::pipeline{&four::sampler, cliff}, small()); }).empty());
 }
 

@@ -7,6 +7,7 @@
 #include <vector>
 
 #include <steelyard/base/algorithm.hpp>
+#include <steelyard/harder/fit_normal.hpp>
 #include <steelyard/harder/population.hpp>
 #include <steelyard/harder/rung_settings.hpp>
 
@@ -14,15 +15,14 @@ namespace steelyard::inline v1::detail {
 
 inline constexpr std::size_t most_fitted = 300;  // words that a fitted move takes in
 
-/// A normal fit of the first k words of some particles in one half of the lineages, in two parts by lineage.
+/// Normal deviates of the first k words of some particles in one half of the lineages, in two parts by lineage.
 template <class X, class Wanted>
-normal_fit fit_half(population<X> const& all, std::size_t half, std::size_t k, Wanted wanted) {
+void points_of_half(population<X> const& all, std::size_t half, std::size_t k, Wanted wanted, weighted_points (&parts)[2]) {
   // More points than these tell little more, and cost k^2 each.
   std::size_t const enough = 4096 + 32 * k;
   std::size_t n = 0;
   all.each_of_half(half, [&](trail<X> const&, visit const& v, double) { n += wanted(v.words) ? 1u : 0u; });
   std::size_t const stride = n / enough + 1;
-  weighted_points parts[2];
   std::size_t at = 0;
   all.each_of_half(half, [&](trail<X> const& t, visit const& v, double w) {
     if (!wanted(v.words) || at++ % stride != 0) return;
@@ -31,7 +31,18 @@ normal_fit fit_half(population<X> const& all, std::size_t half, std::size_t k, W
     for (std::size_t i = 0; i < k; ++i) part.rows.push_back(normal_from_word(words[i]));
     part.weights.push_back(w);
   });
-  return normal_fit::of(parts, k);
+}
+/// Fits of a class for chains in one half of the lineages, from the other half.
+template <class X, class Wanted>
+void fit_class(population<X> const& all, std::size_t half, std::size_t k, Wanted wanted, word_class& cls) {
+  weighted_points parts[2];
+  points_of_half(all, 1 - half, k, wanted, parts);
+  weighted_points points[2];
+  bool const few = cls.words > 0 && k <= most_mixed;
+  if (few)
+    for (std::size_t h = 0; h < 2; ++h) points[h] = parts[h];
+  cls.fits[half] = fit_normal(parts, k);
+  if (few) cls.mixtures[half] = mixture_fit::of(cls.fits[half], points);
 }
 
 /// Classes of the weighed particles by the number of words used, with fits of each half from the other one. Numbers
@@ -53,7 +64,10 @@ std::vector<word_class> find_classes(population<X> const& all, bool fitted) {
     word_class cls;
     cls.words = words;
     for (std::size_t half = 0; half < 2 && fitted; ++half)
-      cls.fits[half] = fit_half(all, 1 - half, std::min(words, most_fitted), [&](std::size_t w) { return w == cls.words; });
+      fit_class(all, half, std::min(words, most_fitted), [&](std::size_t w) { return w == cls.words; }, cls);
+    for (std::size_t half = 0; half < 2; ++half)  // one half may see no modes where the other does
+      if (cls.mixtures[half].size() == 0 && cls.mixtures[1 - half].size() > 0 && cls.fits[half].size() > 0)
+        cls.mixtures[half] = mixture_fit::of(cls.fits[half]);
     classes.push_back(std::move(cls));
   }
   word_class rest;
@@ -63,7 +77,7 @@ std::vector<word_class> find_classes(population<X> const& all, bool fitted) {
       if (each.words == words) return false;
     return true;
   };
-  for (std::size_t half = 0; half < 2 && fitted; ++half) rest.fits[half] = fit_half(all, 1 - half, shortest, in_rest);
+  for (std::size_t half = 0; half < 2 && fitted; ++half) fit_class(all, half, shortest, in_rest, rest);
   classes.push_back(std::move(rest));
   return classes;
 }

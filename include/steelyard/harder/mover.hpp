@@ -90,7 +90,7 @@ class mover {
       if (!(then > impossible)) return;
       double chance = then - now + next_.log_ratio;
       if (std::size_t const other = how.class_of(next_.words.size()); other != of) {
-        if (by.kind == move_kind::fitted || !(how.classes[other].uses[which].share > 0.0)) return;  // no way back
+        if (by.kind == move_kind::fitted || by.kind == move_kind::mixture || !(how.classes[other].uses[which].share > 0.0)) return;  // no way back
         chance += portable_log(how.classes[other].uses[which].share / cls.uses[which].share);
       }
       double const accept = chance >= 0.0 || by.kind == move_kind::exact ? 1.0 : portable_exp(chance);
@@ -113,12 +113,15 @@ class mover {
   /// Fills the proposal; false where nothing that the state used is changed, so that no call is needed.
   bool propose_by(arm const& by, trail<state>& chain, word_class const& cls, normal_fit const& fit, chain_task const& task,
                   rung_settings const& how) {
-    if (by.kind == move_kind::fitted) {
+    if (by.kind == move_kind::fitted || by.kind == move_kind::mixture) {
       while (chain.at.words.size() < fit.size()) {  // words that the state did not use are free
         chain.at.words.push_back(source_());
         chain.at.deviates.push_back(normal_from_word(chain.at.words.back()));
       }
-      propose_fitted(cls.scale, chain.at, fit, source_, next_);
+      if (by.kind == move_kind::fitted)
+        propose_fitted(cls.scale, chain.at, fit, source_, next_);
+      else
+        propose_mixture(chain.at, cls.mixtures[chain.lineage & 1u], source_, next_);
     } else if (by.kind == move_kind::exact) {
       return draw_exactly(by, chain, task, how.target.power, std::index_sequence_for<Moves...>{});
     } else {

@@ -10,17 +10,19 @@
 #include <steelyard/base/elementary.hpp>
 #include <steelyard/draw/draws.hpp>
 #include <steelyard/draw/inversion.hpp>
+#include <steelyard/harder/mixture_fit.hpp>
 #include <steelyard/harder/normal_fit.hpp>
 
 namespace steelyard::inline v1::detail {
 
-/// How a move proposes new words. All but `fitted` and `exact` leave independent uniform words as they are, so that
+/// How a move proposes new words. All but `fitted`, `mixture` and `exact` leave independent uniform words as they are, so that
 /// the likelihood alone decides.
 enum class move_kind : std::uint8_t {
   shift,           ///< each chosen word goes a uniform step round the circle
   autoregressive,  ///< z' = sqrt(1 - s^2) z + s e in normal deviates   [Cotter, Roberts, Stuart & White 2013]
   fresh,           ///< chosen words anew
   fitted,          ///< autoregressive about a normal law fitted to the other half of the lineages
+  mixture,         ///< anew from a mixture of normal laws fitted likewise, where few words have several modes
   exact,           ///< a user's exact draw of one block
 };
 
@@ -118,6 +120,23 @@ inline void propose_fitted(double scale, chain_place& at, normal_fit const& fit,
   }
   to.standard_squares = squares;
   to.log_ratio = 0.5 * (outside + squares - at.standard_squares);
+}
+
+/// Proposes anew from a fitted mixture: the first mix.size() words.
+///   log ratio as above, with g the mixture                              [an independence chain: Tierney, Ann. Stat. 22, 1994]
+inline void propose_mixture(chain_place const& at, mixture_fit const& mix, draws& source, proposal& to) {
+  std::size_t const k = mix.size();
+  to.words = at.words;
+  to.changed.resize(k);
+  to.deviates.resize(k);
+  mix.draw(source, to.deviates);
+  double outside = 0.0;
+  for (std::size_t i = 0; i < k; ++i) {
+    outside += at.deviates[i] * at.deviates[i] - to.deviates[i] * to.deviates[i];
+    to.changed[i] = static_cast<std::uint32_t>(i);
+    to.words[i] = word_from_normal(to.deviates[i]);
+  }
+  to.log_ratio = 0.5 * outside + mix.log_density(std::span<double const>(at.deviates).first(k)) - mix.log_density(to.deviates);
 }
 
 /// Proposes by one of the other arms from `at`, whose deviates are known.

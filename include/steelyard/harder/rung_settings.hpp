@@ -38,10 +38,14 @@ struct arm_use {
 struct word_class {
   std::size_t words = 0;      ///< 0: the rest
   normal_fit fits[2];         ///< fits[h] for chains whose lineage has parity h, made from the others
+  mixture_fit mixtures[2];    ///< likewise, where several modes fit better than one
   double scale = 1.0;         ///< of the fitted move
   std::vector<arm_use> uses;  ///< of each arm
 
-  [[nodiscard]] bool fitted() const noexcept { return fits[0].size() > 0 && fits[1].size() > 0; }
+  [[nodiscard]] bool offers(move_kind kind) const noexcept {
+    if (kind == move_kind::fitted) return fits[0].size() > 0 && fits[1].size() > 0;
+    return kind != move_kind::mixture || (mixtures[0].size() > 0 && mixtures[1].size() > 0);
+  }
 };
 
 /// How the chains of one rung move: what a frozen run repeats.
@@ -64,7 +68,10 @@ struct rung_settings {
 /// The arms of a first rung: every kind at every share of the words from all down to one, and the user's own.
 inline std::vector<arm> first_arms(std::size_t reach, bool fitted, std::span<word_block const> own) {
   std::vector<arm> arms;
-  if (fitted) arms.push_back({move_kind::fitted});
+  if (fitted) {
+    arms.push_back({move_kind::fitted});
+    arms.push_back({move_kind::mixture});
+  }
   for (double included = 1.0;; included = std::max(included / 4.0, 1.0 / static_cast<double>(reach))) {
     arms.push_back({move_kind::shift, 0.3, included});
     arms.push_back({move_kind::autoregressive, 0.5, included});
@@ -83,27 +90,29 @@ inline std::vector<arm> first_arms(std::size_t reach, bool fitted, std::span<wor
   return arms;
 }
 
-/// Gives each class the shares and scales of the rung before, or those to begin with: half for the fitted move.
+/// Gives each class the shares and scales of the rung before. A fitted arm that has no share yet begins with as much as
+/// all those before it.
 inline void inherit_uses(rung_settings& how, rung_settings const& before) {
   std::size_t const n = how.arms.size();
-  bool const may_fit = how.arms.front().kind == move_kind::fitted;
+  auto const by_fit = [&](std::size_t a) { return how.arms[a].kind == move_kind::fitted || how.arms[a].kind == move_kind::mixture; };
   for (word_class& cls : how.classes) {
     if (before.classes.empty()) {
-      cls.uses.assign(n, {(may_fit ? 0.5 : 1.0) / static_cast<double>(n)});
-      if (may_fit) cls.uses.front().share += 0.5;
+      cls.uses.assign(n, {1.0});
+      for (std::size_t a = 0; a < n; ++a)
+        if (by_fit(a)) cls.uses[a].share = 0.0;
     } else {
       word_class const& old = before.classes[before.class_of(cls.words)];
       cls.uses = old.uses;
       cls.scale = old.scale;
       for (arm_use& each : cls.uses) each.sofar = {};
     }
-    if (!may_fit) continue;
-    if (!cls.fitted())
-      cls.uses.front().share = 0.0;
-    else if (cls.uses.front().share == 0.0)
-      cls.uses.front().share = 1.0;
     double sum = 0.0;
-    for (arm_use const& each : cls.uses) sum += each.share;
+    for (std::size_t a = 0; a < n; ++a) {
+      if (!cls.offers(how.arms[a].kind)) cls.uses[a].share = 0.0;
+      sum += cls.uses[a].share;
+    }
+    for (std::size_t a = 0; a < n; ++a)
+      if (by_fit(a) && cls.offers(how.arms[a].kind) && cls.uses[a].share == 0.0) sum += cls.uses[a].share = sum;
     for (arm_use& each : cls.uses) each.share /= sum;
   }
 }
