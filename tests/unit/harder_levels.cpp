@@ -208,7 +208,7 @@ TEST_CASE("a single lineage left: an error bar of the floor, no interval, and br
   };
   auto const reading = [](point const& x) { return sy::log_likelihood{-1250.0 * (4.0 - x[0]) * (4.0 - x[0])}; };
   auto const p = sy::low_probability(sy::pipeline{sampler, reading}, [](point const& x) { return static_cast<double>(x.size()) - 7.5; },
-                                     {.seed = 1, .chains = 40, .draws = 500, .longest = 100});
+                                     {.seed = 1, .chains = 40, .draws = 500, .shortest = 10, .longest = 10});
   REQUIRE(p.diagnosis().lineages() == 1.0);
   CHECK(p.verdict() == sy::verdict::broken);
   CHECK(p.standard_error > 0.0);
