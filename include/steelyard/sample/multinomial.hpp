@@ -21,7 +21,7 @@ namespace steelyard::inline v1::detail {
 /// Positions of k independent draws in rising order: sorted uniforms from
 /// exponential spacings, then one walk.
 ///   U_(j) = (E_1 + ... + E_j) / (E_1 + ... + E_(k+1))       [Devroye, Non-Uniform Random Variate Generation, 1986, ch. V]
-/// Cost  one word a draw, about 5 ns a weight and a draw in all; no memory beside the positions.
+/// Cost  one word a draw, about 7 ns a weight and a draw in all; no memory beside the positions.
 inline void multinomial_positions(std::span<double const> weights, draws& source, std::span<std::size_t> positions,
                                   isa width = widest_isa()) {
   constexpr std::size_t stretch = 256, batch = 4 * stretch;
