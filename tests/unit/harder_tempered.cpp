@@ -58,6 +58,25 @@ TEST_CASE("conjugate readings: evidence, mean and spread as in closed form") {
   agrees(wide.expectation(&first_of<16>), many.mean());
 }
 
+TEST_CASE("no rung is spent on a sliver that the last step could take along") {
+  // In units of the variance that a step to the wanted share costs, 1/share - 1, the last one may cost 1.5.
+  CHECK(sy::detail::enough_at_last(0.5, 0.5));
+  CHECK(sy::detail::enough_at_last(0.401, 0.5));
+  CHECK(!sy::detail::enough_at_last(0.399, 0.5));
+  CHECK(!sy::detail::enough_at_last(0.85, 0.9));
+  CHECK(sy::detail::enough_at_last(0.86, 0.9));
+  CHECK(!sy::detail::enough_at_last(0.0, 0.5));
+  // One word read with deviation s: the precision 1/s^2 + 1 grows by at most q a rung, where sqrt(2 q - 1) / q is the
+  // share: 7.46 for a half. To q^14 are 14 rungs were the reading 0; being 0.5 it takes a little more, and no rung is added.
+  double const q = 4.0 + 2.0 * std::sqrt(3.0), s = std::pow(q, -7.0);
+  int rungs = 0;
+  sy::tempered_plan how{.seed = 1};
+  how.progress = [&rungs](sy::progress_report const&) { ++rungs; };
+  auto const sample = sy::run_tempered(sy::pipeline{&conjugate<1>::sampler, conjugate<1>{s}}, how);
+  CHECK(rungs == 14);
+  agrees(sample.log_evidence(), conjugate<1>{s}.log_evidence());
+}
+
 TEST_CASE("one seed gives one sample, on any number of threads") {
   sy::pipeline const pipe{&four::sampler, four{0.03}};
   auto how = small();

@@ -21,7 +21,7 @@ struct tempered_plan {
   count seed = 1;             ///< the same seed gives the same sample
   unsigned threads = 1;       ///< 0: all cores. Many legacy generators are not safe on several threads
   count chains = 200;         ///< errors fall as their number^(-1/2)
-  double share = 0.5;         ///< of the effective size that a rung leaves, in (0, 1)
+  double share = 0.5;         ///< of the effective size that a rung leaves, in (0, 1); the last may leave a little less
   count draws = 0;            ///< prior draws to begin with; 0: 2000, or 10 a chain where that is more
   count shortest = 20;        ///< states of a chain on one rung, at least
   count longest = 400;        ///< and at most
