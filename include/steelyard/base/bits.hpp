@@ -64,4 +64,19 @@ inline double power_of_two(std::int64_t n) noexcept {
   return std::bit_cast<double>((static_cast<std::uint64_t>(n) + 1023u) << 52);
 }
 
+/// Asks the processor for the memory so many bytes behind an address, soon to be read or written. It may lie past the end
+/// of the array: nothing is touched, and the compiler sees no pointer into it.
+/// @tparam Write  1 where it will be written    @tparam Near  from 3, as near as can be, down to 0
+template <int Write = 0, int Near = 3>
+inline void fetch_ahead(void const* from, std::uintptr_t bytes) noexcept {
+#if defined(__GNUC__)
+  std::uintptr_t address = reinterpret_cast<std::uintptr_t>(from) + bytes;
+  __asm__("" : "+r"(address));
+  __builtin_prefetch(reinterpret_cast<void const*>(address), Write, Near);
+#else
+  static_cast<void>(from);
+  static_cast<void>(bytes);
+#endif
+}
+
 }  // namespace steelyard::inline v1::detail

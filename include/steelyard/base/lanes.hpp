@@ -188,7 +188,7 @@ inline void add_values(double const* values, std::size_t groups, double* lanes) 
   for (std::size_t lane = 0; lane < 8; lane += width) {
     vec sum; load(lanes + lane, sum);
     for (std::size_t group = 0; group < groups; ++group) {
-      if (lane == 0) __builtin_prefetch(values + 8 * group + 2048, 0, 2);  // processors stop at the end of a page
+      if (lane == 0) fetch_ahead<0, 2>(values + 8 * group, 16384);  // processors stop at the end of a page
       vec v; load(values + 8 * group + lane, v);
       add(sum, v, sum);
     }

@@ -4,6 +4,7 @@
 #include <cstddef>
 #include <cstdint>
 
+#include <steelyard/base/bits.hpp>
 #include <steelyard/base/isa.hpp>
 #include <steelyard/base/lanes.hpp>
 
@@ -108,7 +109,7 @@ inline std::uint64_t spread_marks(std::uint64_t* marks, std::size_t n, std::uint
     if (past_caches) {
       store_past(bits, out + j);
     } else {
-      __builtin_prefetch(out + j + 1024, 1);
+      fetch_ahead<1>(out + j, 8192);
       __builtin_memcpy(out + j, &bits, sizeof bits);
     }
   }

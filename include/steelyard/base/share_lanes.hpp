@@ -4,6 +4,7 @@
 #include <cstddef>
 #include <cstdint>
 
+#include <steelyard/base/bits.hpp>
 #include <steelyard/base/isa.hpp>
 #include <steelyard/base/lanes.hpp>
 
@@ -109,7 +110,7 @@ inline std::uint64_t running_sums(double const* numbers, double lift, double fac
                                   std::uint64_t* sums, std::size_t groups) noexcept {
   uvec so_far = uvec{} + sum;
   for (std::size_t at = 0; at < 8 * groups; at += width) {
-    if (at % 8 == 0) __builtin_prefetch(numbers + at + 1024);  // processors stop at the end of a page
+    if (at % 8 == 0) fetch_ahead(numbers + at, 8192);  // processors stop at the end of a page
     vec v; load(numbers + at, v);
     multiply(v, lift, v);
     multiply(v, factor, v);
